@@ -1,0 +1,340 @@
+"""From the plain values of a document to validated parts of a model, with every complaint at once."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass, field
+from typing import Any
+
+from pydantic import ValidationError
+
+from mdof.description.bodies import Body, Support
+from mdof.description.body_checks import body_troubles
+from mdof.description.connection_checks import connection_troubles, property_set_troubles
+from mdof.description.connections import Connection, PropertySet
+from mdof.description.fields import Context, Refused, Section, Trouble, kind_of, troubles, unknown_key
+from mdof.description.readers import DIRECTION_LIST, NAME_RULE, TEXT, name_fault
+from mdof.description.readers import of as quantity_of
+from mdof.description.special_checks import rigid_troubles
+from mdof.description.surroundings import Surroundings, unknown_name
+from mdof.description.whole import Criteria, Damping, Load, Watch
+from mdof.units import DIMENSIONS, QuantityError, factor
+
+__all__ = ["NAMED", "TOP", "Memory", "build"]
+
+#: Sections that hold named entries.
+NAMED: dict[str, type[Section]] = {
+    "supports": Support,
+    "property_sets": PropertySet,
+    "bodies": Body,
+    "connections": Connection,
+    "watch": Watch,
+    "loads": Load,
+}
+#: Every key a model file may have.
+TOP = (
+    "title",
+    "units",
+    "directions",
+    "reference_frequency",
+    "supports",
+    "property_sets",
+    "bodies",
+    "connections",
+    "damping",
+    "watch",
+    "loads",
+    "criteria",
+    "states",
+)
+
+
+#: Complaints after which checking stops; a file with more is not a model with slips in it.
+MOST_TROUBLES = 200
+
+
+@dataclass(slots=True)
+class Memory:
+    """Entries already validated, by identity of what was written: states share most of them with the model."""
+
+    entries: dict[tuple[int, str, int], tuple[Any, Any, list[Trouble]]] = field(default_factory=dict)
+
+
+@dataclass(slots=True)
+class _Parts:
+    values: dict[str, Any] = field(default_factory=dict)
+    troubles: list[Trouble] = field(default_factory=list)
+
+
+def build(raw: Mapping[str, Any], memory: Memory | None = None) -> tuple[dict[str, Any], list[Trouble]]:
+    """Validate a whole model.
+
+    Returns
+    -------
+    values : fields of the model; only complete where there are no complaints.
+    troubles : every complaint, paths from the top of the model.
+    """
+    parts = _Parts()
+    memory = memory or Memory()
+    for key in raw:
+        if len(parts.troubles) >= MOST_TROUBLES:
+            break
+        if key not in TOP:
+            if key == "matrices":
+                parts.troubles.append(
+                    Trouble(
+                        (key,),
+                        "`matrices` is not supported yet in this version of the grammar",
+                        "describe the bodies here",
+                        True,
+                    )
+                )
+            else:
+                parts.troubles.append(unknown_key(key, TOP))
+        elif raw[key] is None:
+            parts.troubles.append(Trouble((key,), "no value is given", f"write one, or remove the key `{key}`"))
+    given = {key: value for key, value in raw.items() if value is not None}
+    units = _units(given.get("units", {}), parts)
+    directions = _single(parts, "directions", DIRECTION_LIST, given, Context(units)) or ("x",)
+    context = Context(units, directions)
+    parts.values["units"] = units
+    parts.values["directions"] = directions
+    parts.values["title"] = _single(parts, "title", TEXT, given, context) or "Untitled model"
+    parts.values["reference_frequency"] = _single(
+        parts, "reference_frequency", quantity_of("frequency", positive=True), given, context
+    )
+    written = {name: _named(parts, name, given, context, memory) for name in NAMED}
+    for name, section in (("damping", Damping), ("criteria", Criteria)):
+        parts.values[name] = None
+        if name in given:
+            parts.values[name] = _validated(parts, section, given[name], (name,), context, memory)
+    _check(parts, written, directions, given)
+    if parts.values["criteria"] is None:
+        parts.values["criteria"] = Criteria.model_validate({})
+    return parts.values, parts.troubles
+
+
+def _units(raw: Any, parts: _Parts) -> dict[str, str]:
+    if raw == "SI":
+        return {"": "SI"}
+    if not isinstance(raw, Mapping):
+        parts.troubles.append(
+            Trouble(
+                ("units",),
+                f"{kind_of(raw)} where the units of bare numbers belong",
+                "write `units: SI` or {length: mm, stiffness: kN/m}",
+            )
+        )
+        return {"": "SI"}
+    known = [name for name, dimension in DIMENSIONS.items() if not dimension.always and name != "number"]
+    result = {}
+    for key, unit in raw.items():
+        path = ("units", key)
+        if key not in known:
+            if key in DIMENSIONS:
+                parts.troubles.append(
+                    Trouble(
+                        path,
+                        f"{DIMENSIONS[key].words} never takes its unit from here",
+                        "write the unit beside every such number",
+                        True,
+                    )
+                )
+            else:
+                parts.troubles.append(unknown_key(key, known).below(("units",)))
+            continue
+        if not isinstance(unit, str):
+            parts.troubles.append(
+                Trouble(path, f"{kind_of(unit)} where a unit belongs", f"write a unit such as {DIMENSIONS[key].unit}")
+            )
+            continue
+        try:
+            factor(unit, key)
+        except QuantityError as error:
+            known_unit = "not a unit mdof knows" in error.message
+            message = error.message if known_unit else f"`{unit[:40]}` is not a unit of {DIMENSIONS[key].words}"
+            parts.troubles.append(
+                Trouble(path, message, error.expected if known_unit else f"write a unit such as {DIMENSIONS[key].unit}")
+            )
+            result[key] = DIMENSIONS[key].unit
+        else:
+            result[key] = unit
+    return result
+
+
+@dataclass(slots=True)
+class _Info:
+    """What readers see outside a schema class."""
+
+    context: Context
+    data: dict[str, Any]
+
+
+def _single(parts: _Parts, name: str, reader: Any, given: Mapping[str, Any], context: Context) -> Any:
+    if name not in given:
+        return None
+    try:
+        return reader.function(given[name], _Info(context, {}))
+    except Refused as refused:
+        parts.troubles.extend(trouble.below((name,)) for trouble in refused.entries)
+        return None
+
+
+def _validated(
+    parts: _Parts, section: type[Section], raw: Any, path: tuple[str | int, ...], context: Context, memory: Memory
+) -> Any:
+    # What a bare number means hangs on the directions, so those belong to the key; the raw value is kept alive with it.
+    key = (id(raw), section.__name__, hash(context.directions))
+    if key in memory.entries:
+        _, made, found = memory.entries[key]
+    else:
+        made, found = None, []
+        try:
+            made = section.model_validate(raw, context=context)
+        except ValidationError as error:
+            found = troubles(error)
+        memory.entries[key] = (raw, made, found)
+    parts.troubles.extend(trouble.below(path) for trouble in found)
+    return made
+
+
+def _named(parts: _Parts, name: str, given: Mapping[str, Any], context: Context, memory: Memory) -> dict[str, Any]:
+    """All entries of a section as written, None for those that are wrong; the valid ones go to the model."""
+    section = NAMED[name]
+    parts.values[name] = {}
+    if name not in given:
+        return {}
+    raw = given[name]
+    if not isinstance(raw, Mapping):
+        parts.troubles.append(
+            Trouble((name,), f"{kind_of(raw)} where named entries belong", f"write {{name: {section.example}}}")
+        )
+        return {}
+    written: dict[str, Any] = {}
+    for key, entry in raw.items():
+        if len(parts.troubles) >= MOST_TROUBLES:
+            break
+        fault = name_fault(key)
+        if fault:
+            parts.troubles.append(Trouble((name, key), fault, NAME_RULE, True))
+        if entry is None:
+            parts.troubles.append(Trouble((name, key), "nothing is described", f"write {section.example}"))
+            written[key] = None
+            continue
+        written[key] = _validated(parts, section, entry, (name, key), context, memory)
+    parts.values[name] = {key: entry for key, entry in written.items() if entry is not None}
+    return written
+
+
+def _check(
+    parts: _Parts, written: Mapping[str, dict[str, Any]], directions: tuple[str, ...], given: Mapping[str, Any]
+) -> None:
+    """What only the whole model shows."""
+    add = parts.troubles.append
+    bodies, supports = written["bodies"], written["supports"]
+    if not bodies and not any(trouble.path[:1] == ("bodies",) for trouble in parts.troubles):
+        add(
+            Trouble(
+                ("bodies",) if "bodies" in given else (),
+                "the model has no body",
+                "write `bodies: {machine: 10 kg}`",
+                True,
+            )
+        )
+    for name in bodies:
+        if name == "ground":
+            add(
+                Trouble(
+                    ("bodies", name),
+                    "`ground` is the ground, which always exists and never moves",
+                    "give the body another name",
+                    True,
+                )
+            )
+        elif name in supports:
+            add(Trouble(("bodies", name), f"`{name}` is also a support", "give one of them another name", True))
+    if "ground" in supports:
+        add(
+            Trouble(
+                ("supports", "ground"),
+                "`ground` always exists and never moves",
+                "give a support that moves another name",
+                True,
+            )
+        )
+    for name, body in bodies.items():
+        if body is not None:
+            parts.troubles.extend(
+                trouble.below(("bodies", name)) for trouble in body_troubles(body, body.directions or directions)
+            )
+    for name, values in written["property_sets"].items():
+        if values is not None:
+            parts.troubles.extend(trouble.below(("property_sets", name)) for trouble in property_set_troubles(values))
+    around = Surroundings(
+        bodies={name: None if body is None else body.directions or directions for name, body in bodies.items()},
+        grounds={"ground", *supports},
+        sets=written["property_sets"],
+    )
+    valid = parts.values["connections"]
+    for name, connection in valid.items():
+        if len(parts.troubles) >= MOST_TROUBLES:
+            return
+        parts.troubles.extend(
+            trouble.below(("connections", name)) for trouble in connection_troubles(connection, around)
+        )
+    parts.troubles.extend(trouble.below(("connections",)) for trouble in rigid_troubles(valid))
+    parts.troubles.extend(_whole(parts.values, written, around))
+
+
+def _whole(values: Mapping[str, Any], written: Mapping[str, dict[str, Any]], around: Surroundings) -> Iterator[Trouble]:
+    damping = values["damping"]
+    if damping is not None:
+        proportional = damping.mass_proportional is not None or damping.stiffness_proportional is not None
+        forms = [proportional, damping.two_ratios is not None, damping.mode_ratios is not None]
+        if sum(forms) != 1:
+            what = "several forms of damping of the whole" if any(forms) else "no damping is given"
+            yield Trouble(("damping",), what, f"write one of {Damping.example}")
+    for name, watch in values["watch"].items():
+        if watch.on not in around.bodies:
+            yield unknown_name(("watch", name, "on"), "body", watch.on, around.bodies)
+    for name, load in values["loads"].items():
+        for trouble in _load(load, around):
+            yield trouble.below(("loads", name))
+    criteria = values["criteria"]
+    if criteria is not None:
+        for key, entry in (("settle", criteria.settle), ("velocity_limit", criteria.velocity_limit)):
+            if entry is not None and entry.at is not None and entry.at not in written["watch"]:
+                yield unknown_name(("criteria", key, "at"), "watched point", entry.at, written["watch"])
+
+
+def _load(load: Load, around: Surroundings) -> Iterator[Trouble]:
+    kinds = [name for name in ("unbalance", "force", "moment", "base") if getattr(load, name) is not None]
+    if len(kinds) != 1:
+        what = "the load says nothing" if not kinds else f"the load is {' and '.join(kinds)} at once"
+        yield Trouble((), what, "give one of unbalance, force, moment or base", True)
+        return
+    kind = kinds[0]
+    needs = {
+        "unbalance": ("on", "axis", "speed"),
+        "force": ("on",),
+        "moment": ("on",),
+        "base": ("direction", "acceleration_spectrum"),
+    }[kind]
+    for name in needs:
+        if getattr(load, name) is None:
+            yield Trouble((), f"`{name}` is missing", f"a load by {kind} needs {', '.join(needs)}", True)
+    allowed = {
+        "unbalance": ("on", "at", "axis", "speed", "order", "orders"),
+        "force": ("on", "at", "speed", "order", "orders"),
+        "moment": ("on", "speed", "order", "orders"),
+        "base": ("direction", "acceleration_spectrum"),
+    }[kind]
+    for name in ("on", "at", "axis", "direction", "acceleration_spectrum", "speed", "order", "orders"):
+        if getattr(load, name) is not None and name not in allowed:
+            yield Trouble((name,), f"`{name}` has no meaning for a load by {kind}", "remove it", True)
+    if load.order is not None and load.orders is not None:
+        yield Trouble(("orders",), "`order` and `orders` are both given", "keep one", True)
+    if load.on is not None and load.on not in around.bodies:
+        yield unknown_name(("on",), "body", load.on, around.bodies)
+    if load.base is not None and load.base not in around.grounds:
+        yield unknown_name(("base",), "support", load.base, around.grounds)

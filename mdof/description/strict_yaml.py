@@ -1,0 +1,368 @@
+"""Strict YAML: text to plain values, with the place of every value and key kept.
+
+Built on the events of PyYAML's C parser with a stack of its own, so nesting costs no recursion and every trap of the
+language is closed here: aliases, anchors, tags, merge keys, duplicate keys, and every spelling that YAML 1.1 and
+YAML 1.2 read differently (``010``, ``1:30``, ``1_000``, ``1e5``, ``yes``).
+"""
+
+from __future__ import annotations
+
+from typing import Any
+
+from mdof.description.document import Document, Path, Span
+from mdof.description.scalars import resolve
+from mdof.errors import Problem
+
+__all__ = ["parse"]
+
+#: Deeper than any model can mean.
+_DEEPEST = 24
+_MOST_VALUES = 400_000
+_MOST_PROBLEMS = 200
+
+
+class _Stopped(Exception):
+    """Reading cannot go on; the reason is already among the problems."""
+
+
+class _Frame:
+    """An open mapping or list."""
+
+    __slots__ = ("container", "dropped", "key", "path")
+
+    def __init__(self, container: Any, path: Path, dropped: bool) -> None:
+        self.container = container
+        self.path = path
+        self.dropped = dropped
+        self.key: str | None = None
+
+
+def parse(text: str, file: str | None = None) -> Document:
+    """Read YAML text strictly. Never raises for wrong text: the problems are in the document."""
+    document = Document(text, file)
+    _refuse_tabs(document)
+    if document.problems:
+        document.complete = False
+        return document
+    import yaml
+
+    loader = getattr(yaml, "CSafeLoader", yaml.SafeLoader)
+    try:
+        _Builder(document).run(yaml.parse(text, Loader=loader))
+    except _Stopped:
+        document.complete = False
+    except yaml.MarkedYAMLError as error:
+        document.complete = False
+        document.problems.append(_syntax_problem(document, error))
+    except yaml.YAMLError as error:
+        document.complete = False
+        document.problems.append(
+            document.problem_at(1, 1, (), f"this is not YAML text ({str(error).splitlines()[0][:80]})")
+        )
+    return document
+
+
+def _refuse_tabs(document: Document) -> None:
+    for number, line in enumerate(document.lines, 1):
+        if "\t" in line:
+            content = line.lstrip(" \t")
+            lead = line[: len(line) - len(content)]
+            if "\t" in lead and content and not content.startswith("#"):
+                document.problems.append(
+                    document.problem_at(
+                        number, lead.index("\t") + 1, (), "the line is indented with a tab", "indent with spaces"
+                    )
+                )
+                if len(document.problems) >= _MOST_PROBLEMS:
+                    return
+
+
+class _Builder:
+    """Turns events into values without recursion."""
+
+    def __init__(self, document: Document) -> None:
+        self.document = document
+        self.stack: list[_Frame] = []
+        self.count = 0
+
+    def complain(self, event: Any, path: Path, message: str, expected: str = "", *, unreadable: bool = True) -> None:
+        mark = event.start_mark
+        self.document.problems.append(self.document.problem_at(mark.line + 1, mark.column + 1, path, message, expected))
+        if unreadable:
+            self.document.unreadable.add(path)
+        if len(self.document.problems) >= _MOST_PROBLEMS:
+            self.document.problems.append(
+                self.document.problem_at(mark.line + 1, mark.column + 1, (), "too many errors; reading stopped here")
+            )
+            raise _Stopped
+
+    def run(self, events: Any) -> None:
+        documents = 0
+        for event in events:
+            kind = type(event).__name__
+            if kind == "ScalarEvent":
+                self.scalar(event)
+            elif kind in ("MappingStartEvent", "SequenceStartEvent"):
+                self.open(event, kind == "MappingStartEvent")
+            elif kind in ("MappingEndEvent", "SequenceEndEvent"):
+                self.close(event)
+            elif kind == "AliasEvent":
+                self.alias(event)
+            elif kind == "DocumentStartEvent":
+                documents += 1
+                if documents > 1:
+                    self.complain(event, (), "a second document starts here", "keep one model in a file")
+                    raise _Stopped
+
+    def here(self) -> Path:
+        """Path of the value that comes next."""
+        if not self.stack:
+            return ()
+        frame = self.stack[-1]
+        return (*frame.path, frame.key if frame.key is not None else len(frame.container))
+
+    def wants_key(self) -> bool:
+        return bool(self.stack) and isinstance(self.stack[-1].container, dict) and self.stack[-1].key is None
+
+    def refuse_decoration(self, event: Any, path: Path) -> None:
+        if event.anchor is not None:
+            self.complain(
+                event,
+                path,
+                f"anchors (&{event.anchor[:40]}) are not read",
+                "write the value out, or use `property_sets`",
+                unreadable=False,
+            )
+        if event.tag is not None:
+            self.complain(event, path, f"tags ({event.tag[:40]}) are not read", "remove the tag")
+
+    def alias(self, event: Any) -> None:
+        if self.wants_key():
+            self.complain(
+                event, self.stack[-1].path, f"a key cannot be an alias (*{event.anchor[:40]})", "write the key out"
+            )
+            self.stack[-1].key = f"*{event.anchor}"
+            self.stack[-1].dropped = True
+            return
+        path = self.here()
+        if not (self.stack and self.stack[-1].dropped):
+            self.complain(
+                event,
+                path,
+                f"aliases (*{event.anchor[:40]}) are not read",
+                "write the value out, or use `property_sets`",
+            )
+        self.put(None, event, path)
+
+    def scalar(self, event: Any) -> None:
+        plain = event.implicit[0] and event.style in (None, "")
+        if not event.value.isprintable() and (hidden := _hidden(event.value)):
+            where = self.stack[-1].path if self.wants_key() else self.here()
+            self.complain(event, where, f"the text holds U+{ord(hidden):04X}, which a person cannot see", "remove it")
+        if self.wants_key():
+            self.key(event, plain)
+            return
+        path = self.here()
+        if event.anchor is not None or event.tag is not None:
+            self.refuse_decoration(event, path)
+        value: Any = event.value
+        if plain:
+            value, complaint, expected = resolve(event.value)
+            if complaint and not self.dropped():
+                self.complain(event, path, complaint, expected)
+        self.put(value, event, path)
+
+    def dropped(self) -> bool:
+        return any(frame.dropped for frame in self.stack)
+
+    def key(self, event: Any, plain: bool) -> None:
+        frame = self.stack[-1]
+        name = event.value
+        path = (*frame.path, name)
+        frame.key = name
+        frame.dropped = False
+        if event.anchor is not None or event.tag is not None:
+            self.refuse_decoration(event, path)
+        if plain and name == "<<":
+            self.complain(event, path, "merge keys (<<) are not read", "write the keys out, or use `property_sets`")
+            frame.dropped = True
+        elif plain and name not in ("on", "On", "ON"):
+            # `on` is a key of the grammar and is read as the text it is.
+            value, complaint, _ = resolve(name)
+            if complaint or not isinstance(value, str):
+                what = (
+                    f"the key `{name[:40]}` is not text to every YAML reader"
+                    if name
+                    else "a key is missing before the colon"
+                )
+                self.complain(
+                    event,
+                    path,
+                    what,
+                    f'write "{name[:40]}" in quotes' if name else "write key: value",
+                    unreadable=False,
+                )
+        if name in frame.container and not frame.dropped:
+            first = self.document.keys[path]
+            self.complain(
+                event,
+                path,
+                f"the key `{name[:60]}` is written twice",
+                f"keep one; the first is on line {first.line}",
+                unreadable=False,
+            )
+            frame.dropped = True
+        if not frame.dropped and not self.dropped():
+            self.document.keys.setdefault(path, _span(event))
+
+    def open(self, event: Any, mapping: bool) -> None:
+        if len(self.stack) >= _DEEPEST:
+            self.complain(event, self.stack[2].path, "nested too deeply for a model", f"use at most {_DEEPEST} levels")
+            raise _Stopped
+        if self.wants_key():
+            frame = self.stack[-1]
+            self.complain(
+                event,
+                frame.path,
+                "a mapping or list cannot be a key",
+                "write a plain name; put text with braces in quotes",
+                unreadable=False,
+            )
+            # The complex key is read and thrown away together with its value.
+            frame.key = ""
+            frame.dropped = True
+            self.stack.append(_Frame({} if mapping else [], (*frame.path, ""), True))
+            self.stack[-1].path = (*frame.path, "?")
+            return
+        path = self.here()
+        if event.anchor is not None or event.tag is not None:
+            self.refuse_decoration(event, path)
+        container: Any = {} if mapping else []
+        self.put(container, event, path, closes=False)
+        self.stack.append(_Frame(container, path, self.dropped()))
+
+    def close(self, event: Any) -> None:
+        frame = self.stack.pop()
+        started = self.document.values.get(frame.path)
+        if started is not None and not frame.dropped:
+            end = event.end_mark
+            self.document.values[frame.path] = Span(started.line, started.column, end.line + 1, end.column + 1)
+        if frame.path and frame.path[-1] == "?" and self.stack and self.stack[-1].key == "":
+            return
+        self.after_value()
+
+    def put(self, value: Any, event: Any, path: Path, closes: bool = True) -> None:
+        self.count += 1
+        if self.count > _MOST_VALUES:
+            self.complain(event, (), f"more than {_MOST_VALUES} values in one model", "split the model")
+            raise _Stopped
+        if not self.dropped():
+            self.document.values[path] = _span(event)
+            if not self.stack:
+                self.document.data = value
+            elif isinstance(self.stack[-1].container, dict):
+                self.stack[-1].container[self.stack[-1].key] = value
+            else:
+                self.stack[-1].container.append(value)
+        if closes:
+            self.after_value()
+
+    def after_value(self) -> None:
+        if self.stack and isinstance(self.stack[-1].container, dict):
+            frame = self.stack[-1]
+            frame.key = None
+            # A mapping inside a dropped value stays dropped; only what this mapping dropped itself ends here.
+            frame.dropped = len(self.stack) > 1 and self.stack[-2].dropped
+
+
+def _hidden(text: str) -> str | None:
+    """A character of the text that is neither printed nor white space, if there is one."""
+    return next((character for character in text if not (character.isprintable() or character.isspace())), None)
+
+
+def _span(event: Any) -> Span:
+    start, end = event.start_mark, event.end_mark
+    return Span(start.line + 1, start.column + 1, end.line + 1, end.column + 1)
+
+
+_SYNTAX = (
+    ("exceeded maximum nesting depth", "nested too deeply for a model", f"use at most {_DEEPEST} levels"),
+    (
+        "mapping values are not allowed",
+        "there is a second `key: value` on this line",
+        "start it on a line of its own, or put text with `: ` in quotes",
+    ),
+    ("could not find expected ':'", "a key without a colon", "write key: value (with a blank after the colon)"),
+    (
+        "did not find expected ',' or '}'",
+        "a { ... } is not closed here, or a comma is missing",
+        "close it with } or separate its keys with commas",
+    ),
+    (
+        "did not find expected ',' or ']'",
+        "a [ ... ] is not closed here, or a comma is missing",
+        "close it with ] or separate its values with commas",
+    ),
+    (
+        "did not find expected key",
+        "this line does not line up with the keys above it",
+        "indent the keys of one mapping equally",
+    ),
+    (
+        "did not find expected '-' indicator",
+        "this line does not line up with the list above it",
+        "indent the dashes of one list equally",
+    ),
+    ("did not find expected node content", "a value is missing here", "write a value"),
+    (
+        "block sequence entries are not allowed",
+        "a list starts with a dash in the wrong place",
+        "start it on a line of its own",
+    ),
+    ("found unexpected end of stream", "a quote is opened and never closed", "close the quote"),
+    (
+        "found character that cannot start any token",
+        "a value cannot start with this character",
+        "put the text in quotes",
+    ),
+    ("found a tab character", "a tab stands where only spaces may", "use spaces"),
+    ("found undefined tag handle", "tags (!...) are not read", "remove the tag"),
+    (
+        "found unknown escape character",
+        "this backslash sequence means nothing inside double quotes",
+        "use single quotes, or double the backslash",
+    ),
+    ("found undefined alias", "aliases (*...) are not read", "write the value out, or use `property_sets`"),
+    (
+        "did not find expected <document start>",
+        "something stands after the end of the model",
+        "put everything into one mapping of keys",
+    ),
+    (
+        "did not find expected alphabetic or numeric character",
+        "a value cannot start with & or *",
+        "put the text in quotes",
+    ),
+    ("found incompatible YAML document", "this YAML version is not known", "remove the %YAML line"),
+    ("found unexpected document indicator", "a quote is opened and never closed", "close the quote"),
+)
+
+
+def _syntax_problem(document: Document, error: Any) -> Problem:
+    """A parser error in an engineer's words, at its place."""
+    mark = error.problem_mark or error.context_mark
+    line, column = (mark.line + 1, mark.column + 1) if mark is not None else (1, 1)
+    text = str(error.problem or error.context or "")
+    message, expected = f"this is not YAML ({text[:80]})", "check the punctuation here and on the line above"
+    for start, what, way in _SYNTAX:
+        if start in text:
+            message, expected = what, way
+            break
+    if error.context_mark is not None and mark is not error.context_mark and error.context_mark.line + 1 != line:
+        message = f"{message} (it began on line {error.context_mark.line + 1})"
+    if line > len(document.lines) or (line == len(document.lines) and not document.lines[-1].strip()):
+        # The parser noticed at the end of the text; the line with something on it is the useful place.
+        while line > 1 and (line > len(document.lines) or not document.lines[line - 1].strip()):
+            line -= 1
+        column = len(document.lines[line - 1].rstrip()) + 1
+    return document.problem_at(line, column, (), message, expected)
