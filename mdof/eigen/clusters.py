@@ -1,0 +1,89 @@
+"""Roots that rounding cannot tell apart: their mean over the invariant subspace, and how well that is known."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from mdof.eigen.blocks import connected
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+__all__ = ["average_clusters"]
+
+_EPS = float(np.finfo(np.float64).eps)
+
+
+def average_clusters(
+    values: NDArray[np.complex128],
+    bounds: NDArray[np.float64],
+    block: NDArray[np.int64],
+    partner: NDArray[np.int64],
+    states: list[NDArray[np.float64] | None],
+) -> tuple[NDArray[np.complex128], NDArray[np.float64], NDArray[np.bool_]]:
+    """Replace roots that cannot be told apart by their mean, whose own bound comes from the spectral projector.
+
+    A nearly defective eigenvalue moves by the square root of rounding; the mean of the colliding roots does not.
+    ``partner`` is filled in place for real roots that collide.
+    """
+    values, bounds = values.copy(), bounds.copy()
+    clustered = np.zeros(len(values), dtype=bool)
+    for number, state in enumerate(states):
+        own = np.nonzero((block == number) & (values != 0))[0]
+        if state is None or not len(own):
+            continue
+        reach = 4 * bounds[own]
+        reach = np.minimum(reach, 1e-6 * np.abs(values[own]))
+        own_values = values[own]
+        near = np.abs(own_values[:, None] - own_values[None, :]) <= reach[:, None] + reach[None, :]
+        touches_axis = (own_values.imag > 0) & (own_values.imag <= reach)
+        near_mirror = np.abs(own_values.conj()[:, None] - own_values[None, :]) <= reach[:, None] + reach[None, :]
+        near |= near_mirror & (touches_axis[:, None] | touches_axis[None, :])
+        for group in connected(near):
+            members = own[group]
+            on_axis = bool(np.any(touches_axis[group])) or bool(np.all(values[members].imag == 0))
+            if len(members) == 1 and not on_axis:
+                continue
+            if len(members) == 1 and not touches_axis[group[0]]:
+                continue
+            weight = np.where(values[members].imag > 0, 2.0, 1.0) if on_axis else np.ones(len(members))
+            mean = complex(np.sum(weight * (values[members].real if on_axis else values[members])) / weight.sum())
+            bound = _mean_bound(state, values[members], on_axis)
+            spread = float(np.max(np.abs(values[members] - mean)))
+            values[members] = mean
+            bounds[members] = bound + spread
+            clustered[members] = True
+            if on_axis:
+                singles = [int(index) for index, size in zip(members, weight, strict=True) if size == 1.0]
+                for first, second in zip(singles[::2], singles[1::2], strict=False):
+                    partner[first], partner[second] = second, first
+                for index, size in zip(members, weight, strict=True):
+                    if size == 2.0:
+                        partner[index] = index
+    return values, bounds, clustered
+
+
+def _mean_bound(state: NDArray[np.float64], members: NDArray[np.complex128], on_axis: bool) -> float:
+    """Bound on the mean of a cluster: rounding of the state matrix over LAPACK's reciprocal condition number s."""
+    from scipy.linalg import lapack, schur
+
+    triangle, basis = schur(state, output="real")
+    centre = members.mean() if not on_axis else members.real.mean()
+    radius = 4 * float(np.max(np.abs(members - centre))) + 1e-12 * abs(centre)
+    real, imaginary = np.diag(triangle), np.zeros(len(triangle))
+    below = np.nonzero(np.diag(triangle, -1))[0]
+    block = np.sqrt(np.abs(np.diag(triangle, -1)[below])) * np.sqrt(np.abs(np.diag(triangle, 1)[below]))
+    imaginary[below] = block
+    imaginary[below + 1] = block
+    chosen = np.abs(real + 1j * imaginary - complex(centre.real, abs(centre.imag))) <= radius
+    norm = float(np.linalg.norm(state))
+    if not chosen.any() or chosen.all():
+        condition = 1.0
+    else:
+        result = lapack.dtrsen(
+            chosen.astype(np.int32), triangle, basis, job=b"E", lwork=len(state) ** 2, liwork=len(state) ** 2
+        )
+        condition = float(result[5]) if result[7] == 0 and result[5] > 0 else 1e-8
+    return 8 * len(state) * _EPS * norm / condition

@@ -1,0 +1,174 @@
+"""Loss factors without a reference frequency: each mode's own |λ| is the reference, found by iteration.
+
+A loss factor η on a spring k acts in a mode like a dashpot ηk/ω matched at the mode's own frequency ω = |λ|. The
+nonlinear problem (λ²M + λ(C + H/|λ|) + K) x = 0 is solved mode by mode: inverse iteration with the reference held,
+then the reference renewed.
+"""
+
+from __future__ import annotations
+
+import dataclasses
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from mdof.eigen.quadratic import Roots, solve_dense
+from mdof.eigen.verify import judge
+from mdof.errors import UnverifiedError
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    from mdof.eigen.reduce import NormalisedProblem
+
+__all__ = ["solve_floating"]
+
+_EPS = float(np.finfo(np.float64).eps)
+_STEPS = 60
+
+
+def solve_floating(problem: NormalisedProblem) -> tuple[Roots, NDArray[np.float64]]:
+    """All roots with floating loss factors, and the reference used for each root [rad/s].
+
+    Raises
+    ------
+    UnverifiedError
+        If the iteration does not settle, or two starts settle on one mode.
+    """
+    held = problem.sigma[problem.sigma > 0]
+    middle = float(np.sqrt(held.min() * held.max())) if len(held) else 1.0
+    start = solve_dense(_matched(problem, middle))
+    values, vectors = start.values.copy(), start.vectors.copy()
+    turning = np.nonzero(values.imag > 0)[0]
+    for index in turning:
+        values[index], vectors[:, index] = _own_reference(problem, values[index], vectors[:, index], middle)
+    if _collided(values[turning], vectors[:, turning]):
+        # A far reference changes which mode is which; start each mode at its own undamped frequency instead.
+        values, vectors = _from_undamped(problem, start, turning)
+    reference = np.full(len(values), middle)
+    reference[turning] = np.abs(values[turning])
+    for index in np.nonzero((values.imag == 0) & (values != 0))[0]:
+        if len(turning):
+            nearest = turning[np.argmin(np.abs(np.abs(values[turning]) - abs(values[index])))]
+            reference[index] = abs(values[nearest])
+            near = solve_dense(_matched(problem, reference[index]))
+            candidates = np.nonzero((near.values.imag == 0) & (near.values != 0))[0]
+            if not len(candidates):
+                raise UnverifiedError(
+                    "a real root disappears when loss factors are matched at the nearest mode",
+                    "state a `reference_frequency`",
+                )
+            like = np.abs(near.vectors[:, candidates].conj().T @ start.vectors[:, index])
+            best = candidates[int(np.argmax(like))]
+            values[index], vectors[:, index] = near.values[best], near.vectors[:, best]
+    judgement = judge(problem, values, vectors, None if problem.symmetric else start.left, reference)
+    found = dataclasses.replace(
+        start,
+        values=values,
+        computed=values,
+        vectors=vectors,
+        bounds=np.where(values == 0, start.bounds, judgement.bound),
+        backward=judgement.backward,
+        slope=judgement.slope,
+        clustered=np.zeros(len(values), dtype=bool),
+        method=start.method + ", loss factors matched at each mode's own frequency by iteration",
+    )
+    return found, reference
+
+
+def _matched(problem: NormalisedProblem, reference: float) -> NormalisedProblem:
+    """The problem with its floating loss factors turned into dashpots at one reference."""
+    rows = problem.loss_rows / np.sqrt(reference)
+    return dataclasses.replace(
+        problem,
+        damping=problem.damping + rows.T @ rows,
+        damper_rows=np.vstack([problem.damper_rows, rows]),
+        damper_signs=np.concatenate([problem.damper_signs, np.ones(len(rows))]),
+        loss_rows=np.zeros((0, problem.loss_rows.shape[1])),
+    )
+
+
+def _own_reference(
+    problem: NormalisedProblem, value: complex, vector: NDArray[np.complex128], reference: float
+) -> tuple[complex, NDArray[np.complex128]]:
+    """Follow one oscillating root until its own |λ| is its reference, by full solves picked by shape."""
+    for _ in range(_STEPS):
+        roots = solve_dense(_matched(problem, abs(value)))
+        turning = np.nonzero(roots.values.imag > 0)[0]
+        if not len(turning):
+            break
+        like = np.abs(roots.vectors[:, turning].conj().T @ vector) / (
+            1 + np.abs(roots.values[turning] - value) / abs(value)
+        )
+        best = turning[int(np.argmax(like))]
+        change = abs(roots.values[best] - value)
+        value, vector = complex(roots.values[best]), roots.vectors[:, best]
+        if change <= 8 * _EPS * abs(value):
+            return value, vector
+        if change <= 1e-6 * abs(value):
+            return _polish(problem, value, vector)
+    raise UnverifiedError(
+        f"the mode near {reference / (2 * np.pi):.4g} Hz does not settle with loss factors matched at its own "
+        "frequency",
+        "state a `reference_frequency` for the loss factors",
+    )
+
+
+def _polish(
+    problem: NormalisedProblem, value: complex, vector: NDArray[np.complex128]
+) -> tuple[complex, NDArray[np.complex128]]:
+    """Inverse iteration with a renewed reference, to the last digits."""
+    size, heavy = len(vector), problem.heavy
+    stiffness = problem.stiffness
+    loss = problem.loss_rows.T @ problem.loss_rows
+    mass = np.zeros(size)
+    mass[:heavy] = 1.0
+    for _ in range(_STEPS):
+        damping = problem.damping + loss / abs(value)
+        quadratic = value * damping + stiffness + np.diag(value**2 * mass)
+        slope = 2 * value * mass * vector + damping @ vector
+        try:
+            new = np.linalg.solve(quadratic, slope)
+        except np.linalg.LinAlgError:
+            return value, vector
+        vector = np.asarray(new / np.linalg.norm(new), dtype=np.complex128)
+        defect = vector @ (value**2 * mass * vector + value * (damping @ vector) + stiffness @ vector)
+        step = -defect / (vector @ (2 * value * mass * vector + damping @ vector))
+        value = complex(value + step)
+        if abs(step) <= 4 * _EPS * abs(value):
+            return value, vector
+    return value, vector
+
+
+def _collided(values: NDArray[np.complex128], vectors: NDArray[np.complex128]) -> bool:
+    same = np.abs(values[:, None] - values[None, :]) <= 1e-9 * np.abs(values)[:, None]
+    alike = np.abs(vectors.conj().T @ vectors) > 1 - 1e-6
+    np.fill_diagonal(same, False)
+    return bool(np.any(same & alike))
+
+
+def _from_undamped(
+    problem: NormalisedProblem, start: Roots, turning: NDArray[np.int64]
+) -> tuple[NDArray[np.complex128], NDArray[np.complex128]]:
+    """Grow the loss factors from nothing, so that every mode keeps its identity."""
+    values, vectors = start.values.copy(), start.vectors.copy()
+    quiet = dataclasses.replace(problem, loss_rows=problem.loss_rows * 1e-3)
+    roots = solve_dense(_matched(quiet, float(np.sqrt(problem.sigma.min() * problem.sigma.max()))))
+    following = np.nonzero(roots.values.imag > 0)[0]
+    if len(following) != len(turning):
+        raise UnverifiedError(
+            "loss factors matched at each mode's own frequency change which modes oscillate",
+            "state a `reference_frequency`",
+        )
+    for place, index in zip(turning, following, strict=True):
+        value, vector = complex(roots.values[index]), roots.vectors[:, index]
+        for part in np.linspace(0.1, 1.0, 10):
+            value, vector = _own_reference(
+                dataclasses.replace(problem, loss_rows=problem.loss_rows * np.sqrt(part)), value, vector, abs(value)
+            )
+        values[place], vectors[:, place] = value, vector
+    if _collided(values[turning], vectors[:, turning]):
+        raise UnverifiedError(
+            "two modes settle on one root with floating loss factors", "state a `reference_frequency`"
+        )
+    return values, vectors

@@ -1,0 +1,156 @@
+"""The complete dense problem: every root of the normalised quadratic, in blocks that damping does not couple.
+
+Damping that leaves an undamped mode alone needs no eigensolver: its two roots are those of a scalar quadratic. The
+others go through the energy-balanced state matrix ``[[0, Σ], [−Σ, −D]]`` (see Veselić, Damped Oscillations of Linear
+Systems, Lecture Notes in Mathematics 2023, 2011), in which masses and springs are scaled alike, with free motions
+deflated, and LAPACK's QR algorithm.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from mdof.eigen.blocks import rotate_equal, uncoupled_blocks
+from mdof.eigen.clusters import average_clusters
+from mdof.eigen.oscillators import oscillator_bounds, single_oscillator
+from mdof.eigen.refine import refine
+from mdof.eigen.state_matrix import companion, energy_balanced
+from mdof.eigen.verify import judge
+from mdof.errors import UnverifiedError
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    from mdof.eigen.reduce import NormalisedProblem
+
+__all__ = ["Roots", "solve_dense"]
+
+
+@dataclass(frozen=True, kw_only=True, slots=True, eq=False)
+class Roots:
+    """Roots of a quadratic with real coefficients, one of each conjugate pair.
+
+    Attributes
+    ----------
+    values : ndarray of complex, shape (q,) [1/s]
+        Imaginary parts are not negative.
+    computed : ndarray of complex, shape (q,) [1/s]
+        The roots before clusters were averaged; they belong to the vectors.
+    vectors, left : ndarray of complex, shape (m, q)
+        Right vectors z; left ones (unconjugated) or None for symmetric problems.
+    bounds : ndarray, shape (q,)
+        Forward bound on |δλ|; for members of a cluster the bound of its mean.
+    backward : ndarray, shape (q,)
+    block : ndarray of int, shape (q,)
+        Roots of different blocks belong to motions that damping does not couple.
+    partner : ndarray of int, shape (q,)
+        Index of the other real root of the same oscillator where that is known, else -1.
+    clustered : ndarray of bool
+        True where colliding roots were replaced by the mean over their invariant subspace.
+    slope : ndarray of complex, shape (q,): zᵀ(2λM + D)z
+    count : int
+        Number of eigenvalues these stand for, conjugates included.
+    method : str
+    """
+
+    values: NDArray[np.complex128]
+    computed: NDArray[np.complex128]
+    vectors: NDArray[np.complex128]
+    left: NDArray[np.complex128] | None
+    bounds: NDArray[np.float64]
+    backward: NDArray[np.float64]
+    block: NDArray[np.int64]
+    partner: NDArray[np.int64]
+    clustered: NDArray[np.bool_]
+    slope: NDArray[np.complex128]
+    count: int
+    method: str
+
+
+def solve_dense(problem: NormalisedProblem) -> Roots:
+    """All roots of the normalised problem, judged.
+
+    Raises
+    ------
+    UnverifiedError
+        If a root does not come out finite, or roots are missing.
+    """
+    if not problem.recover.shape[1]:
+        raise UnverifiedError("the model has no coordinate that can move", "give a body a direction")
+    problem, turn = rotate_equal(problem)
+    blocks = uncoupled_blocks(problem)
+    size = problem.recover.shape[1]
+    found, places = [], []
+    for block in blocks:
+        if len(block) == 1 and problem.modal and problem.symmetric:
+            found.append(single_oscillator(problem, int(block[0])))
+        elif problem.skew_stiffness is not None:
+            found.append(companion(problem))
+        else:
+            found.append(energy_balanced(problem, block))
+        places.append(block)
+    values, vectors, lefts, block_of, partner, states = [], [], [], [], [], []
+    offset = 0
+    for number, (part, place) in enumerate(zip(found, places, strict=True)):
+        wide = np.zeros((size, len(part.values)), dtype=np.complex128)
+        wide[place] = part.vectors
+        values.append(part.values)
+        vectors.append(wide)
+        block_of.append(np.full(len(part.values), number))
+        partner.append(np.where(part.partner >= 0, part.partner + offset, -1))
+        states.append(part.state)
+        if part.left is not None:
+            lefts.append(part.left)
+        offset += len(part.values)
+    roots = np.concatenate(values)
+    z = np.hstack(vectors)
+    left = np.hstack(lefts) if lefts else None
+    if not (np.all(np.isfinite(roots)) and np.all(np.isfinite(z))):
+        raise UnverifiedError(
+            "an eigenvalue came out infinite or undefined", "look for values near the ends of the number range"
+        )
+    z, left = _normalised(z), None if left is None else _normalised(left)
+    which = np.concatenate(block_of)
+    roots, z, left = refine(problem, roots, z, left)
+    judgement = judge(problem, roots, z, left)
+    mates = np.concatenate(partner)
+    bounds = oscillator_bounds(problem, roots, judgement.bound, which, blocks)
+    computed = roots
+    roots, bounds, clustered = average_clusters(roots, bounds, which, mates, states)
+    return Roots(
+        values=roots,
+        computed=computed,
+        vectors=z if turn is None else turn @ z,
+        left=left if turn is None or left is None else turn @ left,
+        bounds=bounds,
+        backward=judgement.backward,
+        block=which,
+        partner=mates,
+        clustered=clustered,
+        slope=judgement.slope,
+        count=sum(part.count for part in found),
+        method=_describe(problem, blocks),
+    )
+
+
+def _describe(problem: NormalisedProblem, blocks: list[NDArray[np.int64]]) -> str:
+    largest = max(len(block) for block in blocks)
+    if problem.skew_stiffness is not None:
+        return "dense, state matrix of an unsymmetric system"
+    if not problem.modal:
+        return "dense, energy-balanced state matrix with first-order states"
+    if largest == 1 and problem.symmetric:
+        return "proportional: every undamped mode keeps its own two roots"
+    alone = sum(len(block) == 1 for block in blocks) if problem.symmetric else 0
+    note = f", {alone} modes that damping leaves uncoupled" if alone else ""
+    return f"dense, energy-balanced state matrix{note}"
+
+
+def _normalised(vectors: NDArray[np.complex128]) -> NDArray[np.complex128]:
+    length = np.linalg.norm(vectors, axis=0)
+    if np.any(length == 0):
+        raise UnverifiedError("an eigenvector vanished", "look for values near the ends of the number range")
+    return np.asarray(vectors / length, dtype=np.complex128)

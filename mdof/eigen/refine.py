@@ -1,0 +1,82 @@
+"""Refining roots and vectors of the normalised problem until only rounding is left."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from mdof.eigen.verify import judge
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    from mdof.eigen.reduce import NormalisedProblem
+
+__all__ = ["refine"]
+
+_EPS = float(np.finfo(np.float64).eps)
+_REFINEMENTS = 6
+
+
+def refine(
+    problem: NormalisedProblem,
+    values: NDArray[np.complex128],
+    vectors: NDArray[np.complex128],
+    left: NDArray[np.complex128] | None,
+) -> tuple[NDArray[np.complex128], NDArray[np.complex128], NDArray[np.complex128] | None]:
+    """Inverse iteration for vectors that leave more than rounding, then two-sided Rayleigh steps.
+
+    The steps recover small roots beside large ones; roots about to collide keep their values.
+    """
+    vectors = vectors.copy()
+    left = None if left is None else left.copy()
+    for turn in range(_REFINEMENTS):
+        judgement = judge(problem, values, vectors, left)
+        wanted = (np.abs(judgement.step) > 0.5 * _EPS * np.abs(values)) & (values != 0)
+        wanted &= np.abs(judgement.step) < 0.05 * _gaps(values)
+        moved = values + np.where(wanted, judgement.step, 0.0)
+        values = np.where(values.imag == 0, moved.real, moved)
+        rough = (judgement.backward > 0.25 * len(vectors) * _EPS) & (values != 0)
+        if turn == _REFINEMENTS - 1 or not (rough.any() or wanted.any()):
+            break
+        for index in np.nonzero(rough)[0]:
+            vectors[:, index] = _inverse_step(problem, values[index], vectors[:, index], transposed=False)
+            if left is not None:
+                left[:, index] = _inverse_step(problem, values[index], left[:, index], transposed=True)
+    return values, vectors, left
+
+
+def _inverse_step(
+    problem: NormalisedProblem, value: complex, vector: NDArray[np.complex128], *, transposed: bool
+) -> NDArray[np.complex128]:
+    """One step of inverse iteration on Q(λ), kept only where it leaves a smaller residual."""
+    mass = np.zeros(len(vector))
+    mass[: problem.heavy] = 1.0
+    value = value.real if value.imag == 0 else value
+    quadratic = value * problem.damping + problem.stiffness + np.diag(value**2 * mass)
+    slope = 2 * value * np.diag(mass) + problem.damping
+    if transposed:
+        quadratic, slope = quadratic.T, slope.T
+    # Equilibration keeps the elimination stable where stiff and soft modes stand side by side.
+    row = 1.0 / np.maximum(np.abs(quadratic).max(axis=1), 1e-300)
+    try:
+        new = np.linalg.solve(quadratic * row[:, None], row * (slope @ vector))
+    except np.linalg.LinAlgError:
+        # Singular to the last digit: the root is exact in working precision, and its null vector is the shape.
+        new = np.linalg.svd(quadratic * row[:, None])[2][-1].conj()
+    length = np.linalg.norm(new)
+    if not np.isfinite(length) or length == 0:
+        return vector.astype(np.complex128)
+    new = new / length
+    better = np.linalg.norm(quadratic @ new) < np.linalg.norm(quadratic @ vector)
+    return np.asarray(new if better else vector, dtype=np.complex128)
+
+
+def _gaps(values: NDArray[np.complex128]) -> NDArray[np.float64]:
+    """Distance of every root to the nearest other one, its own conjugate included, exact zero roots left out."""
+    both = np.concatenate([np.where(values == 0, np.inf, values), values[values.imag > 0].conj()])
+    distance = np.abs(values[:, None] - both[None, :])
+    distance[np.arange(len(values)), np.arange(len(values))] = np.inf
+    result: NDArray[np.float64] = distance.min(axis=1)
+    return np.where(np.isfinite(result), result, np.abs(values))

@@ -1,0 +1,265 @@
+"""mdof.solve: from a System to verified damped modes."""
+
+from __future__ import annotations
+
+import dataclasses
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from mdof.eigen.blocks import rotate_equal
+from mdof.eigen.floating import solve_floating
+from mdof.eigen.quadratic import solve_dense
+from mdof.eigen.reduce import NormalisedProblem, normalise
+from mdof.eigen.verify import GATE
+from mdof.errors import UnverifiedError, UsageError
+from mdof.modes.mode import DampedModes, Verification
+from mdof.modes.pairing import Pairing, pair_roots
+from mdof.modes.physical import PhysicalResidual
+from mdof.modes.proportionality import proportionality_findings, shortcut
+from mdof.modes.regime import Numbers, Regime, classify
+from mdof.modes.remarks import mode_findings
+from mdof.system import System
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+__all__ = ["solve"]
+
+_EPS = float(np.finfo(np.float64).eps)
+#: A relative forward bound above this is no answer.
+_LARGEST_BOUND = 1e-2
+
+
+def solve(system: System, count: int | None = None, near: float = 0.0, method: str = "auto") -> DampedModes:
+    """All damped modes of a system, every one verified.
+
+    Parameters
+    ----------
+    system : System
+    count : int, optional
+        How many modes to return; default all.
+    near : float [rad/s]
+        With ``count``: return the modes whose natural frequency is nearest to this.
+    method : {"auto", "dense"}
+
+    Returns
+    -------
+    DampedModes
+
+    Raises
+    ------
+    UsageError
+        If an option is not what it should be.
+    UnverifiedError
+        If the numbers cannot be verified; nothing is returned then.
+    """
+    if not isinstance(system, System):
+        raise UsageError(f"solve takes a System, not {type(system).__name__}; make one with mdof.assemble(model)")
+    if method not in ("auto", "dense"):
+        raise UsageError(f"method must be 'auto' or 'dense', not {method!r}")
+    if count is not None and (isinstance(count, bool) or not isinstance(count, (int, np.integer)) or count < 1):
+        raise UsageError(f"count must be a positive whole number, not {count!r}")
+    if count is None and near:
+        raise UsageError("near goes with count: say how many modes to return")
+    if not np.isfinite(near) or near < 0:
+        raise UsageError(f"near must be a frequency in rad/s, not {near!r}")
+    with np.errstate(over="ignore", invalid="ignore", divide="ignore", under="ignore"):
+        try:
+            return _Solution(system).modes(count, float(near))
+        except np.linalg.LinAlgError as error:
+            raise UnverifiedError(
+                f"the eigenvalue computation broke down ({error})", "look for values near the ends of the number range"
+            ) from None
+
+
+class _Solution:
+    """The steps of one solve."""
+
+    def __init__(self, system: System) -> None:
+        self.system = system
+        self.problem: NormalisedProblem = rotate_equal(normalise(system))[0]
+        self.references: NDArray[np.float64] | None = None
+        if len(self.problem.loss_rows):
+            self.roots, self.references = solve_floating(self.problem)
+        else:
+            self.roots = solve_dense(self.problem)
+        self.pairing: Pairing = pair_roots(self.roots, self.problem.heavy)
+        physical = PhysicalResidual(system, self.references)
+        roots = self.roots
+        polished, self.reduced, errors = physical.polish(
+            roots.computed, self.problem.recover @ self.pairing.vectors, np.where(roots.clustered, 0.0, roots.bounds)
+        )
+        self.roots = dataclasses.replace(
+            roots,
+            values=np.where(roots.clustered, roots.values, polished),
+            bounds=roots.bounds + np.abs(polished - roots.computed),
+        )
+        #: The larger of the backward errors in mass-normalised and in physical coordinates, per root.
+        self.backward: NDArray[np.float64] = np.maximum(errors, roots.backward)
+
+    def modes(self, count: int | None, near: float) -> DampedModes:
+        roots, pairing = self.roots, self.pairing
+        numbers = [self._classified(slow, fast) for slow, fast in pairing.pairs]
+        order = self._order(numbers)
+        if count is not None:
+            frequency = np.array([self._sort_key(pairing.pairs[index]) for index in order])
+            chosen = np.sort(np.argsort(np.abs(frequency - near), kind="stable")[:count])
+            order = [order[index] for index in chosen]
+        pairs = [pairing.pairs[index] for index in order]
+        numbers = [numbers[index] for index in order]
+        slow = np.array([pair[0] for pair in pairs])
+        values = np.array([self._eigenvalues(pair) for pair in pairs])
+        reduced, backward = self.reduced, self.backward
+        verification = self._verify(numbers)
+        shapes, own = self._shapes(reduced[:, slow])
+        fast = np.array([pair[1] if pair[1] != pair[0] else -1 for pair in pairs])
+        fast_shapes = np.full_like(shapes, np.nan)
+        paired = fast >= 0
+        if paired.any():
+            fast_shapes[:, paired] = self._shapes(reduced[:, fast[paired]])[0]
+        plain = shortcut(self.problem)
+        with_ratio = np.array([entry.damping_ratio is not None for entry in numbers])
+        nearest = np.where(with_ratio, plain.nearest(pairing.vectors[:, slow], self.problem.heavy), -1)
+        easy = np.append(plain.ratios(), np.nan)[nearest]
+        undamped = np.append(plain.frequencies, np.nan)[nearest]
+        ratios, frequencies = _array(numbers, "damping_ratio"), _array(numbers, "natural_frequency")
+        references = np.full(len(pairs), np.nan) if self.references is None else self.references[slow]
+        findings = mode_findings(self.system, self.problem, numbers, pairs, pairing, shapes)
+        findings += proportionality_findings(self.system, self.problem, plain, nearest, ratios, frequencies)
+        return DampedModes(
+            system=self.system,
+            eigenvalues=_frozen(values),
+            regimes=tuple(entry.regime for entry in numbers),
+            natural_frequencies=_frozen(frequencies),
+            damping_ratios=_frozen(ratios),
+            decay_rates=_frozen(np.array([entry.decay_rate for entry in numbers])),
+            shapes=_frozen(shapes),
+            fast_shapes=_frozen(fast_shapes),
+            reduced_shapes=_frozen(own),
+            undamped_frequencies=_frozen(undamped),
+            shortcut_damping_ratios=_frozen(easy),
+            backward_errors=_frozen(np.array([max(backward[i], backward[max(i, j)]) for i, j in pairs])),
+            damping_ratio_bounds=_frozen(_array(numbers, "damping_ratio_bound")),
+            frequency_bounds=_frozen(_array(numbers, "frequency_bound")),
+            damping_references=_frozen(references),
+            method=roots.method,
+            loss_reference=_loss_reference(self.system),
+            findings=tuple(findings),
+            verification=verification,
+        )
+
+    def _classified(self, slow: int, fast: int) -> Numbers:
+        roots = self.roots
+        first, second = self._eigenvalues((slow, fast))
+        single = fast < 0
+        return classify(
+            first,
+            None if single else second,
+            (float(roots.bounds[slow]), float(roots.bounds[slow if single else fast])),
+            relaxation=slow in self.pairing.relaxation,
+            passive=self.problem.passive,
+        )
+
+    def _eigenvalues(self, pair: tuple[int, int]) -> tuple[complex, complex]:
+        slow, fast = pair
+        value = complex(self.roots.values[slow])
+        if fast < 0:
+            return value, complex(np.nan, np.nan)
+        return value, value.conjugate() if fast == slow else complex(self.roots.values[fast])
+
+    def _sort_key(self, pair: tuple[int, int]) -> float:
+        first, second = self._eigenvalues(pair)
+        return abs(first) if np.isnan(second.real) else float(np.sqrt(abs(first)) * np.sqrt(abs(second)))
+
+    def _order(self, numbers: list[Numbers]) -> list[int]:
+        """By sqrt|λs λf|, ties within 1e-9 by decay rate."""
+        keys = [self._sort_key(pair) for pair in self.pairing.pairs]
+        order = sorted(range(len(keys)), key=keys.__getitem__)
+        result: list[int] = []
+        start = 0
+        for stop in range(1, len(order) + 1):
+            if stop == len(order) or keys[order[stop]] > keys[order[start]] * (1 + 1e-9):
+                result += sorted(order[start:stop], key=lambda index: numbers[index].decay_rate)
+                start = stop
+        return result
+
+    def _verify(self, numbers: list[Numbers]) -> Verification:
+        roots, problem = self.roots, self.problem
+        size = problem.recover.shape[1]
+        gate = float(self.backward.max(initial=0.0)) / (size * _EPS)
+        if not gate < GATE:
+            raise UnverifiedError(
+                f"an eigenpair leaves a residual {gate:.3g} times n times the unit roundoff; {GATE:g} is the limit",
+                "look for stiffness, mass or damping values that differ by more than 12 orders of magnitude",
+            )
+        bounds = _array(numbers, "frequency_bound")
+        largest = float(np.nanmax(bounds)) if np.any(np.isfinite(bounds)) else 0.0
+        if np.any(np.isinf(bounds)) or largest > _LARGEST_BOUND:
+            raise UnverifiedError(
+                f"rounding of the given numbers alone may move an eigenvalue by {100 * largest:.2g} %",
+                "look for a near-mechanism, cancelling stiffness or values over 12 orders of magnitude",
+            )
+        expected = size + problem.heavy
+        if roots.count != expected:
+            raise UnverifiedError(f"{roots.count} eigenvalues found where {expected} are expected", "report this model")
+        growing = [entry for entry in numbers if entry.regime in (Regime.UNSTABLE, Regime.DIVERGENT)]
+        if growing and problem.passive:
+            raise UnverifiedError(
+                "a mode grows although nothing in the model can feed it",
+                "look for values that differ by more than 12 orders",
+            )
+        return Verification(
+            status="verified",
+            largest_scaled_residual=gate,
+            largest_frequency_bound=largest,
+            eigenvalues_expected=expected,
+            eigenvalues_found=roots.count,
+        )
+
+    def _shapes(self, reduced: NDArray[np.complex128]) -> tuple[NDArray[np.complex128], NDArray[np.complex128]]:
+        """Described shapes and reduced ones, scaled: most energetic coordinate real and positive, largest one 1."""
+        from mdof.modes.energy import kinetic_shares
+
+        described = np.asarray(self.system.recovery @ reduced)
+        share = kinetic_shares(self.system, reduced)
+        magnitude = np.abs(described)
+        still = share.max(axis=0, initial=0.0) <= 0
+        rank = np.where(still, magnitude / np.maximum(magnitude.max(axis=0, initial=0.0), 1e-300), share)
+        # Ties go to the first coordinate in file order.
+        leader = np.argmax(rank >= rank.max(axis=0) * (1 - 1e-9), axis=0)
+        columns = np.arange(described.shape[1])
+        phase = described[leader, columns]
+        phase = np.where(phase == 0, 1.0, phase / np.where(phase == 0, 1.0, np.abs(phase)))
+        largest = magnitude.max(axis=0, initial=0.0)
+        factor = phase.conj() / np.where(largest > 0, largest, 1.0)
+        described, reduced = described * factor, reduced * factor
+        described[leader, columns] = described[leader, columns].real
+        return described, reduced
+
+
+def _array(numbers: list[Numbers], name: str) -> NDArray[np.float64]:
+    values = (getattr(entry, name) for entry in numbers)
+    return np.array([np.nan if value is None else value for value in values], dtype=np.float64)
+
+
+def _frozen(values: Any) -> Any:
+    values.flags.writeable = False
+    return values
+
+
+def _loss_reference(system: System) -> str:
+    lossy = system.loss_factor != 0
+    if not lossy.any():
+        return ""
+    stated = np.unique(np.round(system.loss_reference[lossy & np.isfinite(system.loss_reference)] / (2 * np.pi), 6))
+    parts = []
+    if len(stated):
+        parts.append(
+            "as dashpots matched at "
+            + ", ".join(f"{value:g} Hz" for value in stated[:4])
+            + (" and others" if len(stated) > 4 else "")
+        )
+    if system.has_floating_loss_factors:
+        parts.append("as dashpots matched at each mode's own frequency")
+    return " and ".join(parts)

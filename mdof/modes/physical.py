@@ -1,0 +1,133 @@
+"""Residuals in the coordinates and units of the model, from the factors and not from rounded matrices."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    from mdof.system import System
+
+__all__ = ["PhysicalResidual"]
+
+_EPS = float(np.finfo(np.float64).eps)
+_POLISHING_STEPS = 2
+
+
+class PhysicalResidual:
+    """Backward errors of eigenpairs of a System.
+
+    Tisseur (Linear Algebra Appl. 309, 2000) with 2-norms, which large matrices replace by their longest columns: those
+    are never larger, so the error is never flattered.
+
+    Parameters
+    ----------
+    system : System
+    references : ndarray, shape (n_roots,), optional [rad/s]
+        Where loss factors without a stated reference are matched, root by root.
+    """
+
+    def __init__(self, system: System, references: NDArray[np.float64] | None) -> None:
+        self.system = system
+        self.references = references
+        middle = None if references is None else float(np.median(references))
+        self.norms = (_norm(system.M), _norm(system.damping_matrix(middle)), _norm(system.K))
+
+    def _forces(self, vectors: NDArray[np.complex128], index: Any) -> tuple[Any, Any, Any]:
+        """M x, C x and K x for every column."""
+        system = self.system
+        stretch = system.spring_columns.T @ vectors
+        elastic = system.spring_columns @ (system.stiffness[:, None] * stretch)
+        drag = system.spring_columns @ (system.loss_damping()[:, None] * stretch)
+        if self.references is not None:
+            floating = np.isnan(system.loss_reference) & (system.loss_factor != 0)
+            weight = np.where(floating, system.loss_factor * system.stiffness, 0.0)
+            drag = drag + (system.spring_columns @ (weight[:, None] * stretch)) / self.references[index]
+        drag = drag + system.damper_columns @ (system.damping[:, None] * (system.damper_columns.T @ vectors))
+        inertia = system.mass @ vectors
+        if system.extra_stiffness is not None:
+            elastic = elastic + system.extra_stiffness @ vectors
+        for part in (system.extra_damping, system.gyroscopic):
+            if part is not None:
+                drag = drag + part @ vectors
+        return inertia, drag + system.mass_proportional * inertia + system.stiffness_proportional * elastic, elastic
+
+    def backward_errors(
+        self, values: NDArray[np.complex128], vectors: NDArray[np.complex128], index: int | None = None
+    ) -> NDArray[np.float64]:
+        """Backward error of each pair; ``index`` is the root number where a single pair is given."""
+        inertia, drag, elastic = self._forces(vectors, slice(None) if index is None else [index])
+        residual = np.linalg.norm(values**2 * inertia + values * drag + elastic, axis=0)
+        size = np.abs(values)
+        mass, damping, stiffness = self.norms
+        scale = (size**2 * mass + size * damping + stiffness) * np.linalg.norm(vectors, axis=0)
+        return np.asarray(np.divide(residual, scale, out=np.zeros(len(values)), where=scale > 0))
+
+    def polish(
+        self,
+        values: NDArray[np.complex128],
+        vectors: NDArray[np.complex128],
+        freedom: NDArray[np.float64],
+    ) -> tuple[NDArray[np.complex128], NDArray[np.complex128], NDArray[np.float64]]:
+        """Pairs that leave more than rounding here take steps of inverse iteration; only better ones are kept.
+
+        Parameters
+        ----------
+        values : shape (n_roots,) [1/s]; vectors : shape (n, n_roots)
+        freedom : shape (n_roots,) [1/s]
+            How far a root may move: its forward bound. Beyond that the assembled matrices know it less well than the
+            factors do.
+
+        Returns
+        -------
+        values, vectors, backward errors
+        """
+        values, vectors = values.copy(), vectors.copy()
+        errors = self.backward_errors(values, vectors)
+        for index in np.nonzero((errors > 0.5 * self.system.size * _EPS) & (values != 0))[0]:
+            start, vector = complex(values[index]), vectors[:, index]
+            value = start
+            for _ in range(_POLISHING_STEPS):
+                value, vector = self._inverse_step(value, vector, int(index), float(freedom[index]))
+                if abs(value - start) > freedom[index]:
+                    break
+                after = float(self.backward_errors(np.array([value]), vector[:, None], int(index))[0])
+                if after < errors[index]:
+                    errors[index], values[index], vectors[:, index] = after, value, vector
+        return values, vectors, errors
+
+    def _inverse_step(
+        self, value: complex, vector: NDArray[np.complex128], index: int, freedom: float
+    ) -> tuple[complex, NDArray[np.complex128]]:
+        """One step of inverse iteration with the assembled Q(λ), which also corrects λ (Ruhe, SIAM J. Numer. Anal. 10,
+        1973); the pair itself where that breaks down."""
+        reference = None if self.references is None else float(self.references[index])
+        mass, damping = self.system.M.toarray(), self.system.damping_matrix(reference).toarray()
+        quadratic = value**2 * mass + value * damping + self.system.K.toarray()
+        scale = 1.0 / np.sqrt(np.maximum(np.abs(quadratic).max(axis=1), 1e-300))
+        try:
+            new = scale * np.linalg.solve(
+                quadratic * np.outer(scale, scale), scale * ((2 * value * mass + damping) @ vector)
+            )
+        except np.linalg.LinAlgError:
+            return value, vector
+        length, overlap = np.linalg.norm(new), complex(np.vdot(vector, new))
+        if not np.isfinite(length) or length == 0:
+            return value, vector
+        step = -(float(np.linalg.norm(vector)) ** 2) / overlap if overlap else 0.0
+        if value.imag == 0:
+            step = complex(step).real
+        moved = value + step if abs(step) <= freedom else value
+        return complex(moved), new / length
+
+
+def _norm(matrix: Any) -> float:
+    """2-norm of a small sparse matrix; of a large one its longest column, which is a lower bound."""
+    if matrix.shape[0] <= 200:
+        return float(np.linalg.norm(matrix.toarray(), 2))
+    squares = np.zeros(matrix.shape[1])
+    np.add.at(squares, np.repeat(np.arange(matrix.shape[1]), np.diff(matrix.indptr)), np.abs(matrix.data) ** 2)
+    return float(np.sqrt(squares.max(initial=0.0)))

@@ -1,0 +1,171 @@
+"""Is the proportional-damping shortcut safe? First level: exact against shortcut, mode by mode.
+
+The shortcut gives each undamped mode its own ratio d_jj/(2ω_j) and forgets the off-diagonal terms of D = ΦᵀCΦ.
+Caughey & O'Kelly (J. Appl. Mech. 32, 1965): it is exact if and only if C M⁻¹ K is symmetric, that is if every
+d_jk (ω_k² − ω_j²) vanishes. No whole-matrix index decides alone, so modes are judged one by one.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from mdof.findings import Finding, finding
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    from mdof.eigen.reduce import NormalisedProblem
+    from mdof.system import System
+
+__all__ = ["Shortcut", "proportionality_findings", "shortcut"]
+
+#: A mode is misstated when its ratio is off by more than this share of itself and by more than the absolute value ...
+RATIO_SHARE, RATIO_LEAST = 0.10, 0.002
+#: ... or its frequency by more than this share.
+FREQUENCY_SHARE = 0.03
+
+
+@dataclass(frozen=True, kw_only=True, slots=True, eq=False)
+class Shortcut:
+    """Undamped modes with the damping the shortcut gives them.
+
+    Attributes
+    ----------
+    shapes : ndarray, shape (m, n_undamped)
+        In the normalised problem's coordinates, unit mass.
+    frequencies : ndarray, shape (n_undamped,) [rad/s]
+    damping : ndarray, shape (n_undamped, n_undamped)
+        D = ΦᵀCΦ, loss factors without a reference left out.
+    loss : ndarray, shape (n_undamped, n_undamped)
+        ΦᵀHΦ of those, to be divided by a reference.
+    commutator : float
+        ‖CM⁻¹K − KM⁻¹C‖ over ‖KM⁻¹C‖, Frobenius, in mass-normalised coordinates.
+    """
+
+    shapes: NDArray[np.float64]
+    frequencies: NDArray[np.float64]
+    damping: NDArray[np.float64]
+    loss: NDArray[np.float64]
+    commutator: float
+
+    def ratios(self) -> NDArray[np.float64]:
+        """Shortcut damping ratio of every undamped mode; NaN for free motions."""
+        with np.errstate(divide="ignore", invalid="ignore"):
+            own = np.diag(self.damping) + np.where(self.frequencies > 0, np.diag(self.loss) / self.frequencies, 0.0)
+            return np.where(self.frequencies > 0, own / (2 * self.frequencies), np.nan)
+
+    def nearest(self, vectors: NDArray[np.complex128], heavy: int) -> NDArray[np.int64]:
+        """Index of the undamped mode nearest in shape to each root vector."""
+        like = np.abs(self.shapes[:heavy].T @ vectors[:heavy])
+        return np.asarray(np.argmax(like, axis=0), dtype=np.int64)
+
+
+def shortcut(problem: NormalisedProblem) -> Shortcut:
+    """Undamped modes and the shortcut's damping; massless coordinates follow their springs."""
+    heavy, size = problem.heavy, problem.recover.shape[1]
+    if problem.modal:
+        shapes = np.eye(size)
+        squares = np.concatenate([problem.sigma**2 * problem.sign, np.zeros(problem.N.shape[1])])
+    else:
+        stiffness = (problem.W * (problem.sigma**2 * problem.sign)) @ problem.W.T
+        follow = -np.linalg.pinv(stiffness[heavy:, heavy:], hermitian=True) @ stiffness[heavy:, :heavy]
+        condensed = stiffness[:heavy, :heavy] + stiffness[:heavy, heavy:] @ follow
+        squares, modes = np.linalg.eigh(0.5 * (condensed + condensed.T))
+        squares[np.abs(squares) <= size * 1e-15 * np.abs(squares).max(initial=0.0)] = 0.0
+        shapes = np.vstack([modes, follow @ modes])
+    symmetric = 0.5 * (problem.damping + problem.damping.T)
+    damping = shapes.T @ symmetric @ shapes
+    rows = problem.loss_rows @ shapes
+    gap = damping * (squares[:, None] - squares[None, :])
+    weight = float(np.linalg.norm(damping * squares[:, None]))
+    return Shortcut(
+        shapes=shapes,
+        frequencies=np.sqrt(np.maximum(squares, 0.0)),
+        damping=damping,
+        loss=rows.T @ rows,
+        commutator=float(np.linalg.norm(gap)) / weight if weight > 0 else 0.0,
+    )
+
+
+def proportionality_findings(
+    system: System,
+    problem: NormalisedProblem,
+    plain: Shortcut,
+    nearest: NDArray[np.int64],
+    exact_ratios: NDArray[np.float64],
+    exact_frequencies: NDArray[np.float64],
+) -> list[Finding]:
+    """Name the modes the shortcut misstates and the connections that couple them.
+
+    Parameters
+    ----------
+    nearest : ndarray of int, shape (n_modes,); -1 for modes without a ratio
+    exact_ratios, exact_frequencies : ndarray, shape (n_modes,) [-, rad/s]
+    """
+    easy = plain.ratios()
+    misled: list[int] = []
+    worst, worst_text = 0.0, ""
+    for mode, undamped in enumerate(nearest):
+        ratio, frequency = exact_ratios[mode], exact_frequencies[mode]
+        if undamped < 0 or np.isnan(ratio) or np.isnan(easy[undamped]):
+            continue
+        shift = abs(easy[undamped] - ratio)
+        drift = abs(plain.frequencies[undamped] - frequency) / frequency
+        if (shift > RATIO_SHARE * max(abs(ratio), 1e-300) and shift > RATIO_LEAST) or drift > FREQUENCY_SHARE:
+            misled.append(mode + 1)
+            measure = max(shift / max(abs(ratio), RATIO_LEAST), drift)
+            if measure > worst:
+                worst = measure
+                worst_text = (
+                    f"mode {mode + 1} at {frequency / (2 * np.pi):.4g} Hz has {100 * ratio:.3g} %, "
+                    f"the shortcut says {100 * easy[undamped]:.3g} % "
+                    f"at {plain.frequencies[undamped] / (2 * np.pi):.4g} Hz"
+                )
+    if not misled:
+        return []
+    names = _couplers(system, problem, plain, nearest[np.array(misled) - 1])
+    listed = ", ".join(str(number) for number in misled)
+    message = (
+        f"the proportional-damping shortcut misstates {len(misled)} of {len(nearest)} modes ({listed}); "
+        f"worst: {worst_text}; "
+        f"commutator ratio {plain.commutator:.2g}"
+    )
+    if names:
+        message += f"; coupled most by {', '.join(names)}"
+    return [finding("non-proportional-damping", message, modes=tuple(misled), connections=names)]
+
+
+def _couplers(
+    system: System, problem: NormalisedProblem, plain: Shortcut, undamped: NDArray[np.int64]
+) -> tuple[str, ...]:
+    """At most four connections with the largest share in the off-diagonal terms that matter to these modes."""
+    lossy = system.loss_factor != 0
+    stated = np.nonzero(lossy & np.isfinite(system.loss_reference))[0]
+    floating = np.nonzero(lossy & ~np.isfinite(system.loss_reference))[0]
+    names = [*system.damper_names, *(system.spring_names[index] for index in stated)]
+    rows = problem.damper_rows @ plain.shapes
+    signs = problem.damper_signs
+    names += [system.spring_names[index] for index in floating]
+    typical = float(np.median(plain.frequencies[plain.frequencies > 0])) if np.any(plain.frequencies > 0) else 1.0
+    rows = np.vstack([rows, problem.loss_rows @ plain.shapes / np.sqrt(typical)])
+    signs = np.concatenate([signs, np.ones(len(floating))])
+    chosen = np.unique(undamped)
+    squares = plain.frequencies**2
+    # A term d_jk moves mode j by about λ d_jk² λ / (ω_k² − ω_j² + ...); half its own band keeps close modes finite.
+    own = np.abs(np.diag(plain.damping))
+    distance = np.abs(squares[None, :] - squares[chosen, None]) + plain.frequencies[chosen, None] * (
+        own[None, :] + own[chosen, None]
+    )
+    total = rows.T @ (rows * signs[:, None])
+    weight = np.abs(total[chosen]) / np.maximum(distance, 1e-300)
+    weight[np.arange(len(chosen)), chosen] = 0.0
+    share: dict[str, float] = {}
+    terms = np.einsum("ij,jk,ik,i->i", rows[:, chosen], weight * np.sign(total[chosen]), rows, signs)
+    for name, value in zip(names, terms, strict=True):
+        share[name] = share.get(name, 0.0) + float(value)
+    ranked = sorted(share.items(), key=lambda item: -item[1])
+    most = ranked[0][1] if ranked else 0.0
+    return tuple(name for name, value in ranked[:4] if value > 0.05 * most)
