@@ -1,0 +1,1 @@
+"""Archived runs: one write-once HDF5 file a run, and folders of them."""

@@ -1,0 +1,1 @@
+"""Results as people and programs read them: tables, JSON and CSV records, figures."""

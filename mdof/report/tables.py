@@ -1,0 +1,294 @@
+"""The mode table, findings and cautions, as text for a terminal of any width or a pipe."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any, Protocol
+
+from rich.cells import cell_len
+from rich.padding import Padding
+from rich.text import Text
+
+from mdof.findings import Severity
+from mdof.report.look import DASH, Look, aligned, columns, fold, grid, number, pad, percent, plural, styled
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable
+
+    from mdof.findings import Finding
+
+__all__ = [
+    "ModeLike",
+    "Mover",
+    "cautions",
+    "dissipates_most",
+    "findings_block",
+    "heading",
+    "mode_table",
+    "moves_most",
+    "provenance",
+]
+
+_WIDE, _MIDDLE, _NARROW = 150, 104, 72
+_STYLES = {"unstable": "bold red", "divergent": "bold red", "rigid body": "dim", "relaxation": "dim"}
+_SEVERITY = {Severity.SERIOUS: "bold red", Severity.WARNING: "bold yellow", Severity.NOTE: "bold cyan"}
+_ORDER = {Severity.SERIOUS: 0, Severity.WARNING: 1, Severity.NOTE: 2}
+_GAUGE = 10
+
+
+class ModeLike(Protocol):
+    """What a row of the table needs: a solved mode or one read from an archive."""
+
+    @property
+    def number(self) -> int: ...
+    @property
+    def regime(self) -> str: ...
+    @property
+    def natural_frequency(self) -> float | None: ...
+    @property
+    def damped_frequency(self) -> float | None: ...
+    @property
+    def damping_ratio(self) -> float | None: ...
+    @property
+    def decay_rate(self) -> float: ...
+    @property
+    def time_to_two_percent(self) -> float | None: ...
+    @property
+    def undamped_frequency(self) -> float | None: ...
+    @property
+    def shortcut_damping_ratio(self) -> float | None: ...
+    @property
+    def shape(self) -> Any: ...
+    @property
+    def energy(self) -> Any: ...
+
+
+@dataclass(frozen=True, kw_only=True, slots=True)
+class Mover:
+    """A body or connection that leads in a mode, and its share; None where no energy tells."""
+
+    name: str
+    share: float | None
+
+    def __str__(self) -> str:
+        return self.name if self.share is None else f"{100 * self.share:.0f} % {self.name}"
+
+
+def moves_most(mode: ModeLike, bodies: Sequence[str], directions: Sequence[str], energy: Any = None) -> Mover:
+    """The body with most of the kinetic energy and its main direction; by the shape where no mass moves."""
+    kinetic = (energy or mode.energy).kinetic
+    weights = kinetic if kinetic.sum() > 0 else abs(mode.shape) ** 2
+    by_body: dict[str, float] = {}
+    for body, weight in zip(bodies, weights, strict=True):
+        by_body[body] = by_body.get(body, 0.0) + float(weight)
+    leader = max(by_body, key=lambda name: by_body[name])
+    own = [index for index, body in enumerate(bodies) if body == leader]
+    direction = directions[max(own, key=lambda index: float(weights[index]))]
+    name = f"{leader} {direction}" if len(set(directions)) > 1 else leader
+    return Mover(name=name, share=by_body[leader] if weights is kinetic else None)
+
+
+def dissipates_most(mode: ModeLike, energy: Any = None) -> Mover | None:
+    """The connection that dissipates most; the points of one connection (``pot/a``, ``pot/b``) count together."""
+    shares = (energy or mode.energy).dissipated
+    families: dict[str, list[float]] = {}
+    for name, share in shares.items():
+        families.setdefault(name.split("/")[0], []).append(share)
+    if not families:
+        return None
+    leader = max(families, key=lambda family: sum(families[family]))
+    members = [name for name in shares if name.split("/")[0] == leader]
+    return Mover(name=f"{leader} ×{len(members)}" if len(members) > 1 else members[0], share=sum(families[leader]))
+
+
+def heading(title: str, file: str | None, state: str | None, degrees_of_freedom: int, look: Look) -> str:
+    """Title, file, state and size of what was solved."""
+    facts = [
+        file or "built in code",
+        f"state {state}" if state else "as written",
+        plural(degrees_of_freedom, "degree of freedom", "degrees of freedom"),
+    ]
+    return look.render(styled(title, "bold"), styled(" · ".join(facts), "dim"))
+
+
+def provenance(method: str, loss_reference: str, verification: dict[str, Any], look: Look) -> str:
+    """How the numbers came about: method, loss-factor reference, verification."""
+    found, expected = verification["eigenvalues_found"], verification["eigenvalues_expected"]
+    residual = number(verification["largest_scaled_residual"], 2)
+    table = grid()
+    columns(table, [styled("solved by", "dim"), method])
+    if loss_reference:
+        columns(table, [styled("loss factors", "dim"), loss_reference])
+    text = f"{found} of {expected} eigenvalues, largest scaled residual {residual} (passes below 10)"
+    columns(table, [styled(str(verification["status"]), "dim"), text])
+    return look.render(table)
+
+
+def mode_table(modes: Iterable[ModeLike], bodies: Sequence[str], directions: Sequence[str], look: Look) -> str:
+    """All modes, one row each; in a narrow terminal three short lines each.
+
+    Parameters
+    ----------
+    bodies, directions : of every described coordinate, as in ``System.coordinate_bodies``.
+    """
+    rows = list(modes)
+    if not rows:
+        return look.render(styled("no modes"))
+    energies = [mode.energy for mode in rows]
+    movers = [moves_most(mode, bodies, directions, energy) for mode, energy in zip(rows, energies, strict=True)]
+    takers = [dissipates_most(mode, energy) for mode, energy in zip(rows, energies, strict=True)]
+    if look.width is not None and look.width < _NARROW:
+        return _records(rows, movers, takers, look)
+    wide = look.width is None or look.width >= _WIDE
+    middle = wide or (look.width or 0) >= _MIDDLE
+    natural = [mode.natural_frequency for mode in rows]
+    table = [
+        _Column("", "no.", [str(mode.number) for mode in rows]),
+        _Column("natural", "Hz", aligned(_scaled(natural, 1 / (2 * math.pi)))),
+    ]
+    if middle:
+        table.append(_Column("", "rpm", aligned(_scaled(natural, 30 / math.pi))))
+    if wide:
+        table.append(_Column("", "rad/s", aligned(natural)))
+    damped = _scaled([mode.damped_frequency for mode in rows], 1 / (2 * math.pi))
+    table += [
+        _Column("damped", "Hz", aligned(damped)),
+        _Column("ratio", "%", aligned(_scaled([mode.damping_ratio for mode in rows], 100), 3, 3)),
+    ]
+    if wide:
+        undamped = _scaled([mode.undamped_frequency for mode in rows], 1 / (2 * math.pi))
+        table += [
+            _Column("0.1 % to", "100 % log", [_gauge(mode.damping_ratio) for mode in rows], left=True),
+            _Column("shortcut", "%", aligned(_scaled([mode.shortcut_damping_ratio for mode in rows], 100), 3, 3)),
+            _Column("undamped", "Hz", aligned(undamped)),
+        ]
+    table += [
+        _Column("", "regime", [str(mode.regime) for mode in rows], left=True, least=11),
+        _Column("2 % in", "s", aligned([mode.time_to_two_percent for mode in rows], 3)),
+        _Column("moves", "most", [_share(mover) for mover in movers]),
+        _Column("", "", [mover.name for mover in movers], left=True, least=8),
+        _Column("damps", "most", [_share(taker) for taker in takers]),
+        _Column("", "", [taker.name if taker else DASH for taker in takers], left=True, least=8),
+    ]
+    styles = [_STYLES.get(str(mode.regime), "") for mode in rows]
+    return _laid_out(table, styles, 2 if middle else 1, look) or _records(rows, movers, takers, look)
+
+
+@dataclass
+class _Column:
+    """One column: two lines of heading, its cells, and how narrow it may become where it has to give way."""
+
+    name: str
+    unit: str
+    cells: list[str]
+    left: bool = False
+    least: int | None = None
+    width: int = 0
+
+    def __post_init__(self) -> None:
+        self.width = max(cell_len(text) for text in (self.name, self.unit, *self.cells))
+
+    def lines(self, text: str) -> list[str]:
+        parts = [text] if self.least is None else fold(text, self.width)
+        return [pad(part, self.width) if self.left else f"{part:>{self.width}}" for part in parts]
+
+
+def _laid_out(table: list[_Column], styles: list[str], gap: int, look: Look) -> str:
+    """Rows as text.
+
+    Names give way where room is short, the widest column first, and fold; the text is empty if even that is too wide.
+    """
+    spare = math.inf if look.width is None else look.width - sum(column.width + gap for column in table) + gap
+    while spare < 0:
+        givers = [column for column in table if column.least is not None and column.width > column.least]
+        if not givers:
+            return ""
+        max(givers, key=lambda column: column.width).width -= 1
+        spare += 1
+    text = Text(no_wrap=True, overflow="ignore")
+    blank = " " * gap
+    heads = [[column.name for column in table], [column.unit for column in table]]
+    rows = [(cells, "bold") for cells in heads[:1]] + [(cells, "dim") for cells in heads[1:]]
+    rows += [([column.cells[index] for column in table], style) for index, style in enumerate(styles)]
+    for cells, style in rows:
+        folded = [column.lines(cell) for column, cell in zip(table, cells, strict=True)]
+        for line in range(max(map(len, folded))):
+            parts = [
+                part[line] if line < len(part) else " " * column.width
+                for column, part in zip(table, folded, strict=True)
+            ]
+            text.append(f"\n{blank.join(parts).rstrip()}" if text else blank.join(parts).rstrip(), style)
+    return look.render(text)
+
+
+def _scaled(values: Iterable[float | None], factor: float) -> list[float | None]:
+    return [None if value is None else value * factor for value in values]
+
+
+def _share(leader: Mover | None) -> str:
+    return "" if leader is None or leader.share is None else f"{100 * leader.share:.0f} %"
+
+
+def _gauge(ratio: float | None) -> str:
+    """A bar for the damping ratio on a logarithmic scale from 0.1 % to 100 %."""
+    if ratio is None or ratio <= 0:
+        return ""
+    filled = round(_GAUGE * min(1.0, max(0.0, (math.log10(ratio) + 3) / 3)))
+    return "▪" * filled + "·" * (_GAUGE - filled)
+
+
+def _records(rows: Sequence[ModeLike], movers: Sequence[Mover], takers: Sequence[Mover | None], look: Look) -> str:
+    """Three short lines a mode, for narrow terminals."""
+    lines: list[Any] = []
+    room = len(str(rows[-1].number))
+    for mode, mover, taker in zip(rows, movers, takers, strict=True):
+        natural = DASH if mode.natural_frequency is None else number(mode.natural_frequency / (2 * math.pi))
+        damped = DASH if mode.damped_frequency is None else number(mode.damped_frequency / (2 * math.pi))
+        settled = DASH if mode.time_to_two_percent is None else f"{number(mode.time_to_two_percent, 3)} s"
+        first = Text(f"{mode.number:>{room}}  ", style="bold", overflow="fold")
+        first.append(f"{natural} Hz", "bold").append(
+            f" (damped {damped} Hz), ratio {percent(mode.damping_ratio)}", "not bold"
+        )
+        second = styled(f"{mode.regime}, falls to 2 % in {settled}", _STYLES.get(str(mode.regime), ""))
+        third = styled(f"moves {mover}; damps {taker or DASH}", "dim")
+        lines += [first, Padding(second, (0, 0, 0, room + 2)), Padding(third, (0, 0, 0, room + 2))]
+    return look.render(*lines)
+
+
+def findings_block(findings: Iterable[Finding], look: Look) -> str:
+    """Findings, serious ones first: severity and code, what was seen, what to do."""
+    ordered = sorted(findings, key=lambda item: _ORDER[item.severity])
+    if not ordered:
+        return ""
+    parts: list[Any] = []
+    for item in ordered:
+        head = Text(f"{item.severity}", style=_SEVERITY[item.severity], overflow="fold")
+        head.append(f"  {item.code}", "bold")
+        if item.modes:
+            head.append(f"  {_numbers(item.modes)}", "not bold dim")
+        parts += [head, Padding(styled(item.message), (0, 0, 0, 4)), Padding(styled(f"→ {item.advice}"), (0, 0, 0, 4))]
+    return look.render(*parts)
+
+
+def _numbers(modes: Sequence[int]) -> str:
+    """``mode 3``, ``modes 2-4, 11``."""
+    runs: list[list[int]] = []
+    for mode in sorted(modes):
+        if runs and mode == runs[-1][-1] + 1:
+            runs[-1].append(mode)
+        else:
+            runs.append([mode])
+    texts = [f"{run[0]}-{run[-1]}" if len(run) > 2 else ", ".join(map(str, run)) for run in runs]
+    return f"{'mode' if len(modes) == 1 else 'modes'} {', '.join(texts)}"
+
+
+def cautions(look: Look) -> str:
+    """What every reader of a prediction should keep in mind."""
+    text = (
+        "Linear, small-motion, lumped model: no stops, lift-off or backlash. A prediction is not an acceptance: test "
+        "as installed. Safety-critical use (fire pumps, emergency sets) needs independent checking by a qualified "
+        "engineer."
+    )
+    return look.render(styled(text, "dim"))
