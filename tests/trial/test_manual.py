@@ -1,0 +1,124 @@
+"""The manual, the help texts and the commands agree."""
+
+from __future__ import annotations
+
+import json
+import re
+from importlib import import_module
+from pathlib import Path
+
+import click
+import pytest
+
+import mdof
+from mdof.cli import main
+from mdof.cli.app import COMMANDS
+from mdof.modes.regime import Regime
+
+PAGES = sorted((Path(mdof.__file__).parent / "manual").glob("*.md"))
+ALL = "\n".join(page.read_text(encoding="utf-8") for page in PAGES)
+
+
+def command(name: str) -> click.Command:
+    found = getattr(import_module(COMMANDS[name][0]), name)
+    assert isinstance(found, click.Command)
+    return found
+
+
+def leaves() -> dict[str, click.Command]:
+    """Every command that does something, by its full name."""
+    found: dict[str, click.Command] = {}
+    for name in COMMANDS:
+        item = command(name)
+        if isinstance(item, click.Group):
+            found |= {f"{name} {sub}": child for sub, child in item.commands.items()}
+        else:
+            found[name] = item
+    return found
+
+
+@pytest.mark.parametrize("name", COMMANDS)
+def test_the_line_in_the_help_is_the_command_s_own(name: str) -> None:
+    assert command(name).short_help == COMMANDS[name][1]
+
+
+@pytest.mark.parametrize("name", leaves())
+def test_every_option_has_a_help_text(name: str) -> None:
+    for parameter in leaves()[name].params:
+        if isinstance(parameter, click.Option):
+            assert parameter.help, parameter.name
+
+
+def test_every_command_is_in_the_manual() -> None:
+    for name in leaves():
+        assert f"mdof {name}" in ALL, name
+
+
+def test_every_call_in_the_manual_exists() -> None:
+    """Calls are indented lines; their options must be options of the command."""
+    calls = re.findall(r"^    mdof ((?:archive )?[a-z]+)(.*)$", ALL, flags=re.MULTILINE)
+    assert len(calls) >= 6
+    for name, rest in calls:
+        known = {word for parameter in leaves()[name].params for word in parameter.opts}
+        for option in re.findall(r"--[a-z-]+", rest):
+            assert option in known, f"mdof {name} {option}"
+
+
+def test_every_option_of_an_analysis_is_explained() -> None:
+    for name in ("check", "modes", "screen"):
+        for parameter in command(name).params:
+            if isinstance(parameter, click.Option):
+                assert any(option in ALL for option in parameter.opts), f"{name} {parameter.opts}"
+
+
+@pytest.mark.parametrize("page", PAGES, ids=lambda page: page.stem)
+def test_a_page_is_printed_as_it_is(page: Path, capfdbinary: pytest.CaptureFixture[bytes]) -> None:
+    assert main(["manual", page.stem]) == 0
+    assert capfdbinary.readouterr().out == page.read_bytes()
+
+
+def test_the_list_names_every_page(capfd: pytest.CaptureFixture[str]) -> None:
+    assert main(["manual"]) == 0
+    shown = capfd.readouterr().out
+    assert all(page.stem in shown for page in PAGES)
+
+
+def test_pages_named_in_texts_exist() -> None:
+    named = set(re.findall(r"mdof manual ([a-z-]+)", ALL))
+    assert named
+    assert named <= {page.stem for page in PAGES}
+
+
+def test_every_regime_is_explained() -> None:
+    page = (Path(mdof.__file__).parent / "manual" / "modes.md").read_text(encoding="utf-8")
+    assert all(f"**{regime}**" in page for regime in Regime)
+
+
+def test_the_example_object_has_the_keys_of_the_schema() -> None:
+    folder = Path(mdof.__file__).parent
+    page = (folder / "manual" / "json.md").read_text(encoding="utf-8")
+    example = json.loads(re.findall(r"```json\n(.*?)```", page, flags=re.DOTALL)[0])
+    schema = json.loads((folder / "schemas" / "modes.json").read_text(encoding="utf-8"))
+    assert list(example) == schema["required"]
+    assert list(example["modes"][0]) == schema["$defs"]["mode"]["required"]
+    assert set(example["findings"][0]) == set(schema["$defs"]["findings"]["items"]["required"])
+    for path in folder.glob("schemas/*.json"):
+        assert path.name in page
+
+
+def test_the_archive_page_names_every_header_attribute() -> None:
+    import inspect
+
+    from mdof.archive import run
+
+    page = (Path(mdof.__file__).parent / "manual" / "archive.md").read_text(encoding="utf-8")
+    names = re.findall(r'^        "([a-z_]+)":', inspect.getsource(run), flags=re.MULTILINE)
+    assert len(names) > 10
+    assert all(f"`{name}`" in page for name in names)
+
+
+def test_the_model_of_the_manual_can_be_read(tmp_path: Path) -> None:
+    page = (Path(mdof.__file__).parent / "manual" / "model-file.md").read_text(encoding="utf-8")
+    path = tmp_path / "example.yaml"
+    path.write_text(re.findall(r"```yaml\n(.*?)```", page, flags=re.DOTALL)[0], encoding="utf-8")
+    assert main(["check", str(path)]) == 0
