@@ -11,6 +11,7 @@ from mdof.eigen.blocks import rotate_equal
 from mdof.eigen.floating import solve_floating
 from mdof.eigen.quadratic import solve_dense
 from mdof.eigen.reduce import NormalisedProblem, normalise
+from mdof.eigen.threads import suited_threads
 from mdof.eigen.verify import GATE
 from mdof.errors import UnverifiedError, UsageError
 from mdof.modes.mode import DampedModes, Verification
@@ -64,7 +65,8 @@ def solve(system: System, count: int | None = None, near: float = 0.0, method: s
         raise UsageError("near goes with count: say how many modes to return")
     if not np.isfinite(near) or near < 0:
         raise UsageError(f"near must be a frequency in rad/s, not {near!r}")
-    with np.errstate(over="ignore", invalid="ignore", divide="ignore", under="ignore"):
+    quiet = np.errstate(over="ignore", invalid="ignore", divide="ignore", under="ignore")
+    with quiet, suited_threads(system.size):
         try:
             return _Solution(system).modes(count, float(near))
         except np.linalg.LinAlgError as error:
