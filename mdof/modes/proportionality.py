@@ -127,15 +127,22 @@ def proportionality_findings(
     if not misled:
         return []
     names = _couplers(system, problem, plain, nearest[np.array(misled) - 1])
-    listed = ", ".join(str(number) for number in misled)
     message = (
-        f"the proportional-damping shortcut misstates {len(misled)} of {len(nearest)} modes ({listed}); "
-        f"worst: {worst_text}; "
+        f"the proportional-damping shortcut misstates {len(misled)} of {len(nearest)} modes; worst: {worst_text}; "
         f"commutator ratio {plain.commutator:.2g}"
     )
     if names:
-        message += f"; coupled most by {', '.join(names)}"
+        message += f"; coupled most by {_grouped(names)}"
     return [finding("non-proportional-damping", message, modes=tuple(misled), connections=names)]
+
+
+def _grouped(names: tuple[str, ...]) -> str:
+    """Names of one family, as ``mount/left`` and ``mount/right``, written together."""
+    families: dict[str, list[str]] = {}
+    for name in names:
+        stem, _, member = name.partition("/")
+        families.setdefault(stem, []).append(member)
+    return ", ".join(f"{stem} ({', '.join(members)})" if members[0] else stem for stem, members in families.items())
 
 
 def _couplers(
@@ -163,7 +170,7 @@ def _couplers(
     weight = np.abs(total[chosen]) / np.maximum(distance, 1e-300)
     weight[np.arange(len(chosen)), chosen] = 0.0
     share: dict[str, float] = {}
-    terms = np.einsum("ij,jk,ik,i->i", rows[:, chosen], weight * np.sign(total[chosen]), rows, signs)
+    terms = np.einsum("ij,ij->i", rows[:, chosen] @ (weight * np.sign(total[chosen])), rows) * signs
     for name, value in zip(names, terms, strict=True):
         share[name] = share.get(name, 0.0) + float(value)
     ranked = sorted(share.items(), key=lambda item: -item[1])
