@@ -6,7 +6,8 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from mdof.description.incidence import DIRECTIONS, ColumnSet, collect
+from mdof.constraints import Layout, follow_rigid_links, tie_rigid_gears
+from mdof.description.incidence import DIRECTIONS, collect
 from mdof.errors import ModelError, Problem
 from mdof.proportional import with_proportional_damping
 from mdof.system import System
@@ -14,7 +15,6 @@ from mdof.system import System
 if TYPE_CHECKING:
     from collections.abc import Mapping
 
-    from numpy.typing import NDArray
 
 __all__ = ["assemble"]
 
@@ -71,9 +71,15 @@ class _Assembly:
         from scipy.sparse import block_array, coo_array, csc_array
 
         found = collect(self.graph, self.index_or_ground, self.directions)
-        transform = self._rigid_links(found)
+        layout = Layout(
+            names=self.names,
+            directions=self.directions,
+            index_or_ground=self.index_or_ground,
+            centres=self.centres,
+        )
+        transform = follow_rigid_links(layout, found.rigid)
         columns_full = found.columns.matrix(self.centres)
-        transform = self._rigid_gears(found, columns_full, transform)
+        transform = tie_rigid_gears(found, columns_full, transform)
         columns = (transform.T @ columns_full).tocsc()
         # Columns of zeros act where nothing may move; the network check names them.
         acts = np.diff(columns.indptr) > 0
@@ -142,90 +148,6 @@ class _Assembly:
         self._check_massless(system)
         return with_proportional_damping(system, proportional)
 
-    def _coordinates(self, riders: set[int]) -> tuple[NDArray[np.int64], int]:
-        """Coordinate number of every motion, shape (n_bodies, 6), -1 where there is none."""
-        number = np.full((len(self.names), 6), -1, dtype=np.int64)
-        count = 0
-        for body, directions in enumerate(self.directions):
-            if body not in riders:
-                for direction in directions:
-                    number[body, _CODE[direction]] = count
-                    count += 1
-        return number, count
-
-    def _rigid_links(self, found: ColumnSet) -> Any:
-        """Motions of all bodies from the coordinates of those that are not riders: csc, shape (6 n_bodies, n)."""
-        from scipy.sparse import coo_array
-
-        host_of: dict[int, int] = {}
-        for name, host_name, rider_name in found.rigid:
-            a, b = self.index_or_ground[host_name], self.index_or_ground[rider_name]
-            if a < 0 or b < 0:
-                raise _error(
-                    f"connections.{name}", "a rigid link joins two bodies", "hold a body by leaving out its directions"
-                )
-            if b in host_of:
-                raise _error(
-                    f"connections.{name}",
-                    f"{rider_name} already rides on {self.names[host_of[b]]}",
-                    "give each rider one host",
-                )
-            host_of[b] = a
-        number, count = self._coordinates(set(host_of))
-        bodies, motions = np.nonzero(number >= 0)
-        rows = [6 * bodies + motions]
-        columns = [number[bodies, motions]]
-        values = [np.ones(len(bodies))]
-        for rider in host_of:
-            carried = np.eye(6)
-            body, seen = rider, {rider}
-            while body in host_of:
-                host = host_of[body]
-                if host in seen:
-                    raise _error(
-                        "connections", f"rigid links run in a circle through {self.names[host]}", "break the circle"
-                    )
-                seen.add(host)
-                carried = carried @ _carry(self.centres[body] - self.centres[host])
-                body = host
-            lacking = set(self.directions[rider]) - set(self.directions[body])
-            if lacking:
-                raise _error(
-                    f"bodies.{self.names[rider]}.directions",
-                    f"rides on {self.names[body]}, which does not move in {', '.join(sorted(lacking))}",
-                    f"give {self.names[body]} these directions or take them from {self.names[rider]}",
-                )
-            kept = np.nonzero(number[body] >= 0)[0]
-            local, motion = np.nonzero(carried[:, kept])
-            rows.append(6 * rider + local)
-            columns.append(number[body, kept[motion]])
-            values.append(carried[local, kept[motion]])
-        entries = (np.concatenate(values), (np.concatenate(rows), np.concatenate(columns)))
-        return coo_array(entries, shape=(6 * len(self.names), count)).tocsc()
-
-    def _rigid_gears(self, found: ColumnSet, columns: Any, transform: Any) -> Any:
-        """Eliminate the driven angle of every gear without mesh stiffness."""
-        from scipy.sparse import csc_array, eye_array
-
-        for name, column in found.rigid_gears:
-            row = (columns[:, [column]].T @ transform).toarray().ravel()
-            if not np.any(np.abs(row) > 1e-12 * np.abs(columns[:, [column]].toarray()).max(initial=0.0)):
-                raise _error(
-                    f"connections.{name}",
-                    "the gear has no angle left to tie",
-                    "remove it, or give the bodies a rotation",
-                )
-            driven = [leg[1] for leg in found.columns.legs if leg[0] == column][-1]
-            wanted = np.zeros(len(row))
-            wanted[transform[6 * driven : 6 * driven + 6].tocoo().col] = 1.0
-            pivot = int(np.argmax(np.abs(row) * (wanted if np.any(row * wanted) else 1.0)))
-            solved = -row / row[pivot]
-            keep = np.delete(np.arange(len(row)), pivot)
-            elimination = eye_array(len(row), format="lil")
-            elimination[pivot, :] = solved.reshape(1, -1)
-            transform = (transform @ csc_array(elimination)[:, keep]).tocsc()
-        return transform
-
     def _motion_mass(self) -> Any:
         """Mass matrix over the six motions of every body: csc, shape (6 n_bodies, 6 n_bodies)."""
         from scipy.sparse import coo_array
@@ -240,9 +162,12 @@ class _Assembly:
         if turning:
             inertia = np.array([np.asarray(self.bodies[number]["inertia"], dtype=np.float64) for number in turning])
             if inertia.shape != (len(turning), 3, 3):
-                raise _error(
-                    "bodies", "inertia must be a 3 by 3 array about the body's centre", "give the tensor in kg m²"
+                problem = Problem(
+                    path="bodies",
+                    message="inertia must be a 3 by 3 array about the body's centre",
+                    expected="give the tensor in kg m²",
                 )
+                raise ModelError([problem])
             base = 6 * np.array(turning) + 3
             for i in range(3):
                 for j in range(3):
@@ -280,18 +205,21 @@ class _Assembly:
 
     def _check_massless(self, system: System) -> None:
         """Refuse a massless joint that nothing holds in one of its directions."""
+        from scipy.sparse import hstack
+
         empty = np.diff(system.mass.indptr)[: system.degrees_of_freedom] == 0
         if not empty.any():
             return
         recovery = system.recovery.tocsc()
         problems = []
-        held = np.hstack([system.spring_columns.toarray(), system.damper_columns.toarray()])
+        held = hstack([system.spring_columns, system.damper_columns], format="csr")
         by_body: dict[str, list[int]] = {}
         for coordinate in np.nonzero(empty)[0]:
             described = recovery.indices[recovery.indptr[coordinate] : recovery.indptr[coordinate + 1]]
             by_body.setdefault(system.coordinate_bodies[described[0]], []).append(int(coordinate))
         for body, coordinates in by_body.items():
             block = held[coordinates]
+            block = block[:, np.unique(block.indices)].toarray()
             block = block / np.maximum(np.linalg.norm(block, axis=0), np.finfo(float).tiny)
             left, size, _ = np.linalg.svd(block, full_matrices=True)
             rank = int(np.sum(size > 1e-10 * max(size.max(initial=0.0), 1e-300)))
@@ -321,15 +249,3 @@ def _is_ground(name: Any, data: Mapping[str, Any]) -> bool:
 def _centre(body: Mapping[str, Any]) -> Any:
     centre = body.get("centre")
     return (0.0, 0.0, 0.0) if centre is None else centre
-
-
-def _carry(offset: NDArray[np.float64]) -> NDArray[np.float64]:
-    """Motions of a rider whose centre lies ``offset`` from its host's centre: u + θ × offset, θ; shape (6, 6)."""
-    x, y, z = offset
-    result = np.eye(6)
-    result[:3, 3:] = [[0, z, -y], [-z, 0, x], [y, -x, 0]]
-    return result
-
-
-def _error(path: str, message: str, expected: str) -> ModelError:
-    return ModelError([Problem(path=path, message=message, expected=expected)])
