@@ -10,7 +10,7 @@ import numpy as np
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
-    from mdof.modes.mode import Mode
+    from mdof.modes.mode import DampedModes
     from mdof.system import System
 
 __all__ = ["EnergyShares", "energy_shares", "kinetic_shares"]
@@ -35,10 +35,17 @@ class EnergyShares:
     dissipated: dict[str, float]
 
 
-def energy_shares(mode: Mode) -> EnergyShares:
-    """Kinetic energy by coordinate and dissipated energy by connection of a mode."""
-    system, shape = mode.system, mode.reduced_shape
-    return EnergyShares(kinetic=kinetic_shares(system, shape[:, None])[:, 0], dissipated=_dissipated(mode))
+def energy_shares(modes: DampedModes) -> tuple[EnergyShares, ...]:
+    """Kinetic energy by coordinate and dissipated energy by connection of every mode."""
+    kinetic = kinetic_shares(modes.system, modes.reduced_shapes)
+    names, dissipated = _dissipated(modes)
+    return tuple(
+        EnergyShares(
+            kinetic=kinetic[:, index],
+            dissipated={names[row]: float(column[row]) for row in np.nonzero(column)[0]},
+        )
+        for index, column in enumerate(dissipated.T)
+    )
 
 
 def kinetic_shares(system: System, shapes: NDArray[np.complex128]) -> NDArray[np.float64]:
@@ -71,31 +78,34 @@ def _own_rows(system: System) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
     return entries.row[exact][first].astype(np.int64), column.astype(np.int64)
 
 
-def _dissipated(mode: Mode) -> dict[str, float]:
-    system, shape = mode.system, mode.reduced_shape
-    power: dict[str, float] = {}
+def _dissipated(modes: DampedModes) -> tuple[list[str], NDArray[np.float64]]:
+    """Names of whatever dissipates and its share in every mode, shape (n_names, n_modes)."""
+    system, shapes = modes.system, modes.reduced_shapes
+    power = [_loss_power(modes), system.damping[:, None] * np.abs(system.damper_columns.T @ shapes) ** 2]
+    names = [*system.spring_names, *system.damper_names]
+    whole = {
+        "damping.mass_proportional": (system.mass_proportional, system.mass),
+        "damping.stiffness_proportional": (system.stiffness_proportional, system.K),
+        "matrix C": (1.0, system.extra_damping),
+    }
+    for name, (weight, matrix) in whole.items():
+        if weight and matrix is not None:
+            power.append(weight * np.real(np.sum(shapes.conj() * (matrix @ shapes), axis=0))[None, :])
+            names.append(name)
+    distinct = list(dict.fromkeys(names))
+    row = {name: index for index, name in enumerate(distinct)}
+    total = np.zeros((len(distinct), shapes.shape[1]))
+    np.add.at(total, [row[name] for name in names], np.vstack(power))
+    amount, largest = total.sum(axis=0), np.abs(total).max(axis=0, initial=0.0)
+    told = np.abs(amount) > 1e-12 * largest
+    return distinct, np.where(told, np.divide(total, amount, out=np.zeros_like(total), where=told), 0.0)
 
-    def add(name: str, value: float) -> None:
-        if value:
-            power[name] = power.get(name, 0.0) + value
 
-    motion = np.abs(system.spring_columns.T @ shape) ** 2
-    for name, value in zip(system.spring_names, system.loss_damping(mode.damping_reference) * motion, strict=True):
-        add(name, float(value))
-    motion = np.abs(system.damper_columns.T @ shape) ** 2
-    for name, value in zip(system.damper_names, system.damping * motion, strict=True):
-        add(name, float(value))
-    if system.mass_proportional:
-        add(
-            "damping.mass_proportional", float(system.mass_proportional * np.real(shape.conj() @ (system.mass @ shape)))
-        )
-    if system.stiffness_proportional:
-        add(
-            "damping.stiffness_proportional",
-            float(system.stiffness_proportional * np.real(shape.conj() @ (system.K @ shape))),
-        )
-    if system.extra_damping is not None:
-        add("matrix C", float(np.real(shape.conj() @ (system.extra_damping @ shape))))
-    total = sum(power.values())
-    largest = max((abs(value) for value in power.values()), default=0.0)
-    return {name: value / total for name, value in power.items()} if abs(total) > 1e-12 * largest else {}
+def _loss_power(modes: DampedModes) -> NDArray[np.float64]:
+    """Power lost in loss factors, each matched at its own reference or at the mode's, shape (n_springs, n_modes)."""
+    system = modes.system
+    motion = np.abs(system.spring_columns.T @ modes.reduced_shapes) ** 2
+    if not np.isfinite(modes.damping_references).any():
+        return np.asarray(system.loss_damping()[:, None] * motion)
+    references = (None if np.isnan(value) else float(value) for value in modes.damping_references)
+    return np.asarray(np.column_stack([system.loss_damping(value) for value in references]) * motion)

@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, field
-from functools import cached_property
+from functools import cached_property, partial
 from typing import TYPE_CHECKING, overload
 
 import numpy as np
@@ -71,6 +71,8 @@ class Mode:
         The shape in the system's reduced coordinates, inner coordinates of series branches included.
     damping_reference : float or None [rad/s]
         Where loss factors that state no reference were matched for this mode.
+    shares : callable
+        Gives :attr:`energy`, which is worked out for all modes at once when first asked for.
     """
 
     number: int
@@ -90,6 +92,7 @@ class Mode:
     system: System = field(repr=False)
     reduced_shape: NDArray[np.complex128] = field(repr=False)
     damping_reference: float | None = None
+    shares: Callable[[], EnergyShares] = field(repr=False)
 
     @property
     def time_to_two_percent(self) -> float | None:
@@ -99,9 +102,7 @@ class Mode:
     @property
     def energy(self) -> EnergyShares:
         """Kinetic energy by coordinate and dissipated energy by connection, each summing to 1."""
-        from mdof.modes.energy import energy_shares
-
-        return energy_shares(self)
+        return self.shares()
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -158,6 +159,16 @@ class DampedModes(Sequence[Mode]):
         return (self._mode(index) for index in range(len(self)))
 
     @cached_property
+    def energies(self) -> tuple[EnergyShares, ...]:
+        """Kinetic and dissipated energy of every mode."""
+        from mdof.modes.energy import energy_shares
+
+        return energy_shares(self)
+
+    def _shares(self, index: int) -> EnergyShares:
+        return self.energies[index]
+
+    @cached_property
     def _made(self) -> dict[int, Mode]:
         return {}
 
@@ -188,6 +199,7 @@ class DampedModes(Sequence[Mode]):
             damping_reference=_number(self.damping_references[index]),
             system=self.system,
             reduced_shape=self.reduced_shapes[:, index],
+            shares=partial(self._shares, index),
         )
 
     def __repr__(self) -> str:
