@@ -55,7 +55,8 @@ def mode_findings(
                 modes=by_regime[Regime.DIVERGENT],
             )
         )
-    found += _free_motions(system, problem, by_regime[Regime.RIGID_BODY], shapes)
+    rates = [numbers[index - 1].decay_rate for index in by_regime[Regime.RIGID_BODY]]
+    found += _free_motions(system, problem, by_regime[Regime.RIGID_BODY], rates, shapes)
     single = tuple(number for number, pair in enumerate(pairs, 1) if pair[0] in pairing.unresolved and pair[1] < 0)
     if single:
         found.append(
@@ -90,16 +91,21 @@ def mode_findings(
 
 
 def _free_motions(
-    system: System, problem: NormalisedProblem, rigid: tuple[int, ...], shapes: NDArray[np.complex128]
+    system: System,
+    problem: NormalisedProblem,
+    rigid: tuple[int, ...],
+    rates: list[float],
+    shapes: NDArray[np.complex128],
 ) -> list[Finding]:
     if not rigid:
         return []
     labels = system.labels
     named = []
-    for number in rigid[:6]:
+    for number, rate in zip(rigid[:6], rates, strict=False):
         size = np.abs(shapes[:, number - 1])
         leaders = [labels[index] for index in np.argsort(-size, kind="stable")[:3] if size[index] >= 0.3 * size.max()]
-        named.append("+".join(leaders))
+        slows = f", slowed at {rate:.4g} 1/s by damping" if rate > 0 else ""
+        named.append(f"{'+'.join(leaders)}{slows}")
     more = "" if len(rigid) <= 6 else f" and {len(rigid) - 6} more"
     count = f"{len(rigid)} motion{'' if len(rigid) == 1 else 's'}"
     # A damper between two bodies that acts in a free motion is all that holds them together there.

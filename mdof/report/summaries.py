@@ -45,7 +45,7 @@ def check_text(checked: CheckedModel, look: Look) -> str:
     columns(facts, [styled("connections", "dim"), f"{sum(totals.connections.values())}: {kinds}"])
     if len(totals.grounds) > 1:
         columns(facts, [styled("grounds", "dim"), ", ".join(totals.grounds)])
-    free = "; ".join(totals.free_directions) or "no direction of a single body"
+    free = "; ".join(totals.free_directions) or "none; every body is tied to something in each of its directions"
     columns(facts, [styled("free", "dim"), free])
     return look.render(table, "", facts)
 
@@ -57,17 +57,20 @@ def screening_line(name: str, state: str | None, result: Screening, look: Look) 
     scope = "" if result.below is None else f" below {frequency(result.below)}"
     judged = f"{plural(result.judged, 'mode')}{scope}, {limit}"
     if result.passed:
-        text = styled("pass", "bold green")
-        return look.render(text.append(f"  {what}", "not bold default").append(f"  {judged}", "not bold default"))
-    text = styled("FAIL", "bold red").append(f"  {what}", "not bold default")
+        return _verdict(styled("pass", "bold green"), f"{what}  {judged}", look)
     failing = "; ".join(
-        f"mode {mode.number} {frequency(mode.natural_frequency)} {percent(mode.damping_ratio)}"
+        f"mode {mode.number} at {frequency(mode.natural_frequency)} has {percent(mode.damping_ratio)}"
         if mode.regime not in ("unstable", "divergent")
         else f"mode {mode.number} {mode.regime}"
         for mode in result.failing
     )
-    text.append(f"  {len(result.failing)} of {judged}: {failing}", "not bold default")
-    return look.render(text)
+    return _verdict(styled("FAIL", "bold red"), f"{what}  {len(result.failing)} of {judged}: {failing}", look)
+
+
+def _verdict(word: Any, text: str, look: Look) -> str:
+    table = grid()
+    columns(table, [word, text])
+    return look.render(table)
 
 
 def run_list(headers: Sequence[Any], look: Look) -> str:
