@@ -2,22 +2,19 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass, field
 from typing import Any
 
 from pydantic import ValidationError
 
 from mdof.description.bodies import Body, Support
-from mdof.description.body_checks import body_troubles
-from mdof.description.connection_checks import connection_troubles, property_set_troubles
 from mdof.description.connections import Connection, PropertySet
 from mdof.description.fields import Context, Refused, Section, Trouble, kind_of, troubles, unknown_key
 from mdof.description.readers import DIRECTION_LIST, NAME_RULE, TEXT, name_fault
 from mdof.description.readers import of as quantity_of
-from mdof.description.special_checks import rigid_troubles
-from mdof.description.surroundings import Surroundings, unknown_name
 from mdof.description.whole import Criteria, Damping, Load, Watch
+from mdof.description.whole_checks import MOST_TROUBLES, Parts, check_whole
 from mdof.units import DIMENSIONS, QuantityError, factor
 
 __all__ = ["NAMED", "TOP", "Memory", "build"]
@@ -49,21 +46,11 @@ TOP = (
 )
 
 
-#: Complaints after which checking stops; a file with more is not a model with slips in it.
-MOST_TROUBLES = 200
-
-
 @dataclass(slots=True)
 class Memory:
     """Entries already validated, by identity of what was written: states share most of them with the model."""
 
     entries: dict[tuple[int, str, int], tuple[Any, Any, list[Trouble]]] = field(default_factory=dict)
-
-
-@dataclass(slots=True)
-class _Parts:
-    values: dict[str, Any] = field(default_factory=dict)
-    troubles: list[Trouble] = field(default_factory=list)
 
 
 def build(raw: Mapping[str, Any], memory: Memory | None = None) -> tuple[dict[str, Any], list[Trouble]]:
@@ -74,7 +61,7 @@ def build(raw: Mapping[str, Any], memory: Memory | None = None) -> tuple[dict[st
     values : fields of the model; only complete where there are no complaints.
     troubles : every complaint, paths from the top of the model.
     """
-    parts = _Parts()
+    parts = Parts()
     memory = memory or Memory()
     for key in raw:
         if len(parts.troubles) >= MOST_TROUBLES:
@@ -108,13 +95,13 @@ def build(raw: Mapping[str, Any], memory: Memory | None = None) -> tuple[dict[st
         parts.values[name] = None
         if name in given:
             parts.values[name] = _validated(parts, section, given[name], (name,), context, memory)
-    _check(parts, written, directions, given)
+    check_whole(parts, written, directions, given)
     if parts.values["criteria"] is None:
         parts.values["criteria"] = Criteria.model_validate({})
     return parts.values, parts.troubles
 
 
-def _units(raw: Any, parts: _Parts) -> dict[str, str]:
+def _units(raw: Any, parts: Parts) -> dict[str, str]:
     if raw == "SI":
         return {"": "SI"}
     if not isinstance(raw, Mapping):
@@ -170,7 +157,7 @@ class _Info:
     data: dict[str, Any]
 
 
-def _single(parts: _Parts, name: str, reader: Any, given: Mapping[str, Any], context: Context) -> Any:
+def _single(parts: Parts, name: str, reader: Any, given: Mapping[str, Any], context: Context) -> Any:
     if name not in given:
         return None
     try:
@@ -181,7 +168,7 @@ def _single(parts: _Parts, name: str, reader: Any, given: Mapping[str, Any], con
 
 
 def _validated(
-    parts: _Parts, section: type[Section], raw: Any, path: tuple[str | int, ...], context: Context, memory: Memory
+    parts: Parts, section: type[Section], raw: Any, path: tuple[str | int, ...], context: Context, memory: Memory
 ) -> Any:
     # What a bare number means hangs on the directions, so those belong to the key; the raw value is kept alive with it.
     key = (id(raw), section.__name__, hash(context.directions))
@@ -198,7 +185,7 @@ def _validated(
     return made
 
 
-def _named(parts: _Parts, name: str, given: Mapping[str, Any], context: Context, memory: Memory) -> dict[str, Any]:
+def _named(parts: Parts, name: str, given: Mapping[str, Any], context: Context, memory: Memory) -> dict[str, Any]:
     """All entries of a section as written, None for those that are wrong; the valid ones go to the model."""
     section = NAMED[name]
     parts.values[name] = {}
@@ -224,117 +211,3 @@ def _named(parts: _Parts, name: str, given: Mapping[str, Any], context: Context,
         written[key] = _validated(parts, section, entry, (name, key), context, memory)
     parts.values[name] = {key: entry for key, entry in written.items() if entry is not None}
     return written
-
-
-def _check(
-    parts: _Parts, written: Mapping[str, dict[str, Any]], directions: tuple[str, ...], given: Mapping[str, Any]
-) -> None:
-    """What only the whole model shows."""
-    add = parts.troubles.append
-    bodies, supports = written["bodies"], written["supports"]
-    if not bodies and not any(trouble.path[:1] == ("bodies",) for trouble in parts.troubles):
-        add(
-            Trouble(
-                ("bodies",) if "bodies" in given else (),
-                "the model has no body",
-                "write `bodies: {machine: 10 kg}`",
-                True,
-            )
-        )
-    for name in bodies:
-        if name == "ground":
-            add(
-                Trouble(
-                    ("bodies", name),
-                    "`ground` is the ground, which always exists and never moves",
-                    "give the body another name",
-                    True,
-                )
-            )
-        elif name in supports:
-            add(Trouble(("bodies", name), f"`{name}` is also a support", "give one of them another name", True))
-    if "ground" in supports:
-        add(
-            Trouble(
-                ("supports", "ground"),
-                "`ground` always exists and never moves",
-                "give a support that moves another name",
-                True,
-            )
-        )
-    for name, body in bodies.items():
-        if body is not None:
-            parts.troubles.extend(
-                trouble.below(("bodies", name)) for trouble in body_troubles(body, body.directions or directions)
-            )
-    for name, values in written["property_sets"].items():
-        if values is not None:
-            parts.troubles.extend(trouble.below(("property_sets", name)) for trouble in property_set_troubles(values))
-    around = Surroundings(
-        bodies={name: None if body is None else body.directions or directions for name, body in bodies.items()},
-        grounds={"ground", *supports},
-        sets=written["property_sets"],
-    )
-    valid = parts.values["connections"]
-    for name, connection in valid.items():
-        if len(parts.troubles) >= MOST_TROUBLES:
-            return
-        parts.troubles.extend(
-            trouble.below(("connections", name)) for trouble in connection_troubles(connection, around)
-        )
-    parts.troubles.extend(trouble.below(("connections",)) for trouble in rigid_troubles(valid))
-    parts.troubles.extend(_whole(parts.values, written, around))
-
-
-def _whole(values: Mapping[str, Any], written: Mapping[str, dict[str, Any]], around: Surroundings) -> Iterator[Trouble]:
-    damping = values["damping"]
-    if damping is not None:
-        proportional = damping.mass_proportional is not None or damping.stiffness_proportional is not None
-        forms = [proportional, damping.two_ratios is not None, damping.mode_ratios is not None]
-        if sum(forms) != 1:
-            what = "several forms of damping of the whole" if any(forms) else "no damping is given"
-            yield Trouble(("damping",), what, f"write one of {Damping.example}")
-    for name, watch in values["watch"].items():
-        if watch.on not in around.bodies:
-            yield unknown_name(("watch", name, "on"), "body", watch.on, around.bodies)
-    for name, load in values["loads"].items():
-        for trouble in _load(load, around):
-            yield trouble.below(("loads", name))
-    criteria = values["criteria"]
-    if criteria is not None:
-        for key, entry in (("settle", criteria.settle), ("velocity_limit", criteria.velocity_limit)):
-            if entry is not None and entry.at is not None and entry.at not in written["watch"]:
-                yield unknown_name(("criteria", key, "at"), "watched point", entry.at, written["watch"])
-
-
-def _load(load: Load, around: Surroundings) -> Iterator[Trouble]:
-    kinds = [name for name in ("unbalance", "force", "moment", "base") if getattr(load, name) is not None]
-    if len(kinds) != 1:
-        what = "the load says nothing" if not kinds else f"the load is {' and '.join(kinds)} at once"
-        yield Trouble((), what, "give one of unbalance, force, moment or base", True)
-        return
-    kind = kinds[0]
-    needs = {
-        "unbalance": ("on", "axis", "speed"),
-        "force": ("on",),
-        "moment": ("on",),
-        "base": ("direction", "acceleration_spectrum"),
-    }[kind]
-    for name in needs:
-        if getattr(load, name) is None:
-            yield Trouble((), f"`{name}` is missing", f"a load by {kind} needs {', '.join(needs)}", True)
-    allowed = {
-        "unbalance": ("on", "at", "axis", "speed", "order", "orders"),
-        "force": ("on", "at", "speed", "order", "orders"),
-        "moment": ("on", "speed", "order", "orders"),
-        "base": ("direction", "acceleration_spectrum"),
-    }[kind]
-    for name in ("on", "at", "axis", "direction", "acceleration_spectrum", "speed", "order", "orders"):
-        if getattr(load, name) is not None and name not in allowed:
-            yield Trouble((name,), f"`{name}` has no meaning for a load by {kind}", "remove it", True)
-    if load.order is not None and load.orders is not None:
-        yield Trouble(("orders",), "`order` and `orders` are both given", "keep one", True)
-    if load.on is not None and load.on not in around.bodies:
-        yield unknown_name(("on",), "body", load.on, around.bodies)
-    if load.base is not None and load.base not in around.grounds:
-        yield unknown_name(("base",), "support", load.base, around.grounds)

@@ -8,13 +8,14 @@ from collections.abc import Mapping
 from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
 
-from mdof.description.build import MOST_TROUBLES, Memory, build
-from mdof.description.document import Document, dotted, visible
+from mdof.description.build import Memory, build
+from mdof.description.document import Document
 from mdof.description.document import Path as KeyPath
-from mdof.description.fields import Quantity, Trouble, kind_of
-from mdof.description.readers import NAME_RULE
+from mdof.description.fields import Quantity
 from mdof.description.resolved import digest_of, to_si
-from mdof.description.states import chain, state_of
+from mdof.description.state_problems import place_in_state, placed, state_problems
+from mdof.description.states import state_of
+from mdof.description.whole_checks import MOST_TROUBLES
 from mdof.errors import ModelError, Problem, UsageError
 from mdof.units import nearest
 
@@ -24,9 +25,6 @@ if TYPE_CHECKING:
     from mdof.description.whole import Criteria, Damping, Load, Watch
 
 __all__ = ["Model", "Quantity"]
-
-
-_MOST_STATES = 100
 
 
 class Model:
@@ -159,7 +157,7 @@ class Model:
         raw = self._raw if name is None else state_of(self._raw, name)[0]
         values, found = build(raw)
         if found:
-            raise ModelError([_placed(trouble, self._document) for trouble in found])
+            raise ModelError([placed(trouble, self._document) for trouble in found])
         model = Model.__new__(Model)
         model._fill(self._raw, self._document, _titled(values, self._raw, self._document), name)
         return model
@@ -206,7 +204,7 @@ class Model:
             keys.append(int(part) if part.isdigit() and (*keys, part) not in self._document.values else name)
             if point and len(keys) == 2:
                 keys += ["at", point] if path.count(".") == 1 else []
-        return _place_in_state(self._document, tuple(keys), self.state, message, expected, path)
+        return place_in_state(self._document, tuple(keys), self.state, message, expected, path)
 
 
 def _remade(raw: Mapping[str, Any], document: Document | None, state: str | None) -> Model:
@@ -230,9 +228,9 @@ def _checked(raw: Mapping[str, Any], document: Document | None) -> dict[str, Any
     seen: set[tuple[KeyPath, str]] = set()
     for trouble in found:
         if not any(trouble.path[: len(path)] == path for path in unreadable):
-            problems.append(_placed(trouble, document))
+            problems.append(placed(trouble, document))
         seen.add((trouble.path, trouble.message))
-    problems.extend(_state_problems(raw, document, memory, seen))
+    problems.extend(state_problems(raw, document, memory, seen))
     if problems:
         raise ModelError(_in_order(problems))
     return _titled(values, raw, document)
@@ -251,92 +249,3 @@ def _in_order(problems: list[Problem]) -> list[Problem]:
         rest = Problem(path="", message=f"and {len(result) - MOST_TROUBLES} more", file=result[0].file)
         return [*result[:MOST_TROUBLES], rest]
     return result
-
-
-def _state_problems(
-    raw: Mapping[str, Any], document: Document | None, memory: Memory, seen: set[tuple[KeyPath, str]]
-) -> list[Problem]:
-    states = raw.get("states")
-    if states is None:
-        return (
-            [_placed(Trouble(("states",), "no value is given", "remove the key `states`"), document)]
-            if "states" in raw
-            else []
-        )
-    if not isinstance(states, Mapping):
-        return [
-            _placed(
-                Trouble(
-                    ("states",),
-                    f"{kind_of(states)} where named states belong",
-                    f"write {{cold: {{scale: {{..}}}}}}; {NAME_RULE}",
-                ),
-                document,
-            )
-        ]
-    if len(states) > _MOST_STATES:
-        message = f"{len(states)} states in one model"
-        return [_placed(Trouble(("states",), message, f"keep at most {_MOST_STATES}", True), document)]
-    problems: list[Problem] = []
-    known: dict[str, set[tuple[KeyPath, str]]] = {}
-    # A state after the ones it builds on, so that a fault is told once, where it was made.
-    for name in sorted(states, key=lambda name: len(chain(states, name)[0])):
-        if len(problems) >= MOST_TROUBLES:
-            break
-        merged, written = state_of(raw, name)
-        problems += [_placed(trouble, document) for trouble in written]
-        _, found = build(merged, memory)
-        names = chain(states, name)[0]
-        told = seen.union(*(known.get(parent, set()) for parent in names[:-1]))
-        known[name] = {(trouble.path, trouble.message) for trouble in found}
-        for trouble in found:
-            if (trouble.path, trouble.message) not in told:
-                problems.append(
-                    _place_in_state(
-                        document, trouble.path, name, trouble.message, trouble.expected, None, trouble.on_key
-                    )
-                )
-    return problems
-
-
-def _placed(trouble: Trouble, document: Document | None) -> Problem:
-    if document is None:
-        return Problem(path=dotted(trouble.path), message=visible(trouble.message), expected=visible(trouble.expected))
-    return document.place(trouble.path, trouble.message, trouble.expected, on_key=trouble.on_key)
-
-
-def _place_in_state(
-    document: Document | None,
-    path: KeyPath,
-    state: str | None,
-    message: str,
-    expected: str,
-    shown: str | None,
-    on_key: bool = False,
-) -> Problem:
-    """Place a problem of a model in a state: in the state's own lines if it wrote them, else where the model did."""
-    if state is None or document is None:
-        where = path if state is None else ("states", state, *path)
-        if document is None:
-            return Problem(path=shown or dotted(where), message=visible(message), expected=visible(expected))
-        return document.place(path, message, expected, on_key=on_key, shown=shown)
-    best: KeyPath = ()
-    states = document.data.get("states", {})
-    for step in reversed(chain(states, state)[0]):
-        candidates = [("states", step, *path[:length]) for length in range(len(path), 0, -1)]
-        scale = states[step].get("scale") if isinstance(states[step], Mapping) else None
-        candidates += [
-            ("states", step, "scale", target) for target in scale or () if dotted(path).startswith(str(target))
-        ]
-        for candidate in candidates:
-            if candidate in document.values and len(candidate) > len(best):
-                best = candidate
-                break
-        if best:
-            break
-    if not best:
-        if shown is not None and any(path[:length] in document.values for length in range(1, len(path) + 1)):
-            return document.place(path, message, expected, on_key=on_key, shown=shown)
-        best = ("states", state)
-    on_key = len(best) == 2 or (on_key and len(best) >= len(path))
-    return document.place(best, message, expected, on_key=on_key, shown=shown or dotted(("states", state, *path)))
