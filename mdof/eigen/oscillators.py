@@ -62,6 +62,10 @@ def oscillator_bounds(
     own = np.abs(np.diag(problem.damping))[index]
     size = np.abs(values)
     defect = (2 * len(problem.recover) + 8) * _EPS * (size**2 + size * own + squares)
+    if problem.normwise:
+        # The squares came out of a matrix whose rounding is a share of its largest one.
+        largest = float((problem.sigma**2).max(initial=0.0))
+        defect += (len(problem.recover) + 8) * _EPS * problem.amplification * largest
     with np.errstate(divide="ignore", invalid="ignore"):
         simple = 2 * defect / np.abs(2 * values + np.diag(problem.damping)[index])
     return np.where(alone, np.fmin(simple, np.sqrt(2 * defect)), bounds)
