@@ -72,6 +72,10 @@ class ModelError(InputError):
         self.problems = tuple(problems)
         super().__init__("\n".join(str(problem) for problem in self.problems))
 
+    def __reduce__(self) -> tuple[object, ...]:
+        # Exceptions pickle by their text; another process needs the data.
+        return type(self), (self.problems,)
+
 
 class UsageError(InputError):
     """A call that cannot be carried out as asked."""
@@ -93,6 +97,9 @@ class UnverifiedError(MdofError):
         self.reason = reason
         self.advice = advice
         super().__init__(f"{reason}; {advice}")
+
+    def __reduce__(self) -> tuple[object, ...]:
+        return type(self), (self.reason, self.advice)
 
 
 class DamagedArchiveError(MdofError):
