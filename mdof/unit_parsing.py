@@ -163,8 +163,8 @@ def _ask_pint(powers: tuple[tuple[str, int], ...]) -> tuple[Fraction, Exponents]
     unit = registry.parse_units(" * ".join(f"{name} ** {power}" for name, power in powers))
     worth, _ = registry.get_base_units(unit)
     kinds = unit.dimensionality
-    exponents = tuple(int(kinds.get(f"[{kind}]", 0)) for kind in ("mass", "length", "time", "angle"))
-    return Fraction(worth), exponents  # type: ignore[return-value]
+    mass, length, time, angle = (int(kinds.get(f"[{kind}]", 0)) for kind in ("mass", "length", "time", "angle"))
+    return Fraction(worth), (mass, length, time, angle)
 
 
 @lru_cache(maxsize=1)

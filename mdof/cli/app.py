@@ -38,10 +38,10 @@ With several models the largest status wins.
 class Program(click.Group):
     """Commands by name, each loaded when it is called."""
 
-    def list_commands(self, ctx: click.Context) -> list[str]:  # noqa: ARG002
+    def list_commands(self, ctx: click.Context) -> list[str]:
         return list(COMMANDS)
 
-    def get_command(self, ctx: click.Context, cmd_name: str) -> click.Command | None:  # noqa: ARG002
+    def get_command(self, ctx: click.Context, cmd_name: str) -> click.Command | None:
         if cmd_name not in COMMANDS:
             return None
         command = getattr(import_module(COMMANDS[cmd_name][0]), cmd_name)
@@ -54,7 +54,7 @@ class Program(click.Group):
             raise click.UsageError(f"there is no command {args[0]!r}{nearest(args[0], COMMANDS)}", ctx)
         return super().resolve_command(ctx, args)
 
-    def format_commands(self, ctx: click.Context, formatter: click.HelpFormatter) -> None:  # noqa: ARG002
+    def format_commands(self, ctx: click.Context, formatter: click.HelpFormatter) -> None:
         with formatter.section("Commands"):
             formatter.write_dl([(name, text) for name, (_, text) in COMMANDS.items()])
 

@@ -21,7 +21,7 @@ class Word(click.ParamType[str]):
     def __init__(self, *words: str) -> None:
         self.words = words
 
-    def get_metavar(self, param: click.Parameter, ctx: click.Context | None = None) -> str:  # noqa: ARG002
+    def get_metavar(self, param: click.Parameter, ctx: click.Context | None = None) -> str:
         return "|".join(self.words)
 
     def convert(self, value: Any, param: click.Parameter | None, ctx: click.Context | None) -> str:

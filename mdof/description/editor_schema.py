@@ -50,7 +50,7 @@ class ModelFile(Section):
 class _Generator(GenerateJsonSchema):
     """Field descriptions stay, titles made from names go: they say nothing an editor needs."""
 
-    def field_title_should_be_set(self, schema: Any) -> bool:  # noqa: ARG002 - the base class names it
+    def field_title_should_be_set(self, schema: Any) -> bool:
         return False
 
 

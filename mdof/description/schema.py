@@ -126,7 +126,8 @@ class Model:
     def __setattr__(self, name: str, value: Any) -> None:
         raise AttributeError("a Model cannot be changed; build another one, or use with_state")
 
-    __delattr__ = __setattr__  # type: ignore[assignment]
+    def __delattr__(self, name: str) -> None:
+        self.__setattr__(name, None)
 
     def __reduce__(self) -> tuple[Any, ...]:
         return _remade, (self._raw, self._document, self.state)
