@@ -262,7 +262,14 @@ def test_a_full_disk_behind_standard_output_is_an_error_without_traceback() -> N
 @pytest.mark.skipif(sys.platform == "win32", reason="interrupts are sent differently there")
 def test_an_interrupt_ends_with_130_and_leaves_nothing(tmp_path: Path) -> None:
     command = [sys.executable, "-m", "mdof.cli", "modes", *[SKID] * 300, "--archive", "runs"]
-    process = subprocess.Popen(command, cwd=tmp_path, stdout=subprocess.DEVNULL, stderr=subprocess.PIPE)
+    process = subprocess.Popen(
+        command,
+        cwd=tmp_path,
+        stdout=subprocess.DEVNULL,
+        stderr=subprocess.PIPE,
+        # A job in the background is started with interrupts ignored.
+        preexec_fn=lambda: signal.signal(signal.SIGINT, signal.SIG_DFL),
+    )
     while process.poll() is None and not list(tmp_path.glob("runs/*.h5")):
         time.sleep(0.01)
     process.send_signal(signal.SIGINT)

@@ -14,6 +14,7 @@ import pytest
 ROOT = Path(__file__).parents[2]
 TEXT = (ROOT / "README.md").read_text(encoding="utf-8")
 BLOCKS = re.findall(r"^```(\w+)\n(.*?)^```$", TEXT, re.MULTILINE | re.DOTALL)
+RESIDUAL = re.compile(r"residual 0(\.\d+)?(?= )")
 SHOWN = [text for language, text in BLOCKS if language == "console"]
 
 
@@ -46,6 +47,8 @@ def test_commands_print_what_the_readme_shows(block: str, folder: Path) -> None:
     command, *lines = block.splitlines()
     assert command.startswith("$ mdof ")
     printed = [line.rstrip() for line in call(command.split()[2:], folder).splitlines()]
+    # How small a residual comes out depends on the BLAS at hand.
+    lines, printed = ([RESIDUAL.sub("residual tiny", line) for line in side] for side in (lines, printed))
     # "..." stands for lines left out.
     for part in "\n".join(lines).split("...\n" if "...\n" in "\n".join(lines) else "\n..."):
         wanted = part.strip("\n")
