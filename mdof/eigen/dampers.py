@@ -11,9 +11,11 @@ if TYPE_CHECKING:
 
     from mdof.system import System
 
-__all__ = ["damper_rows", "damper_rows_in_modes"]
+__all__ = ["damper_rows", "damper_rows_in_modes", "factored_damping"]
 
 _EPS = float(np.finfo(np.float64).eps)
+#: A damping matrix has few dampers where its rank is below one in so many coordinates.
+_FEW = 8
 
 
 def damper_rows(
@@ -73,3 +75,41 @@ def damper_rows_in_modes(
     result[count:] = from_forces(ratio, stated, result[count:], size[count:])
     floated = from_forces(system.loss_factor[floating], floating, floated, floated_size)
     return result, floated
+
+
+def factored_damping(system: System) -> tuple[NDArray[np.float64] | None, Any]:
+    """Columns F, shape (n, r), with ``F Fᵀ`` the given damping matrix where its rank is low, and what is left over.
+
+    Cholesky factorisation with diagonal pivoting stops at the rank (Higham, Accuracy and Stability of Numerical
+    Algorithms, 2nd ed. 2002, section 10.3); a matrix of full rank, or one that is not positive semidefinite, is left
+    as it is.
+    """
+    matrix = system.extra_damping
+    if matrix is None:
+        return None, None
+    diagonal = matrix.diagonal()
+    largest = float(diagonal.max(initial=0.0))
+    most = system.size // _FEW
+    if most == 0 or largest <= 0 or np.any(diagonal < 0) or abs(matrix - matrix.T).max() > 4 * _EPS * largest:
+        return None, matrix
+    tolerance = system.size * _EPS * diagonal
+    left = diagonal.copy()
+    columns = np.zeros((system.size, most))
+    for rank in range(most):
+        pivot = int(np.argmax(np.where(diagonal > 0, left / np.where(diagonal > 0, diagonal, 1.0), 0.0)))
+        if left[pivot] <= tolerance[pivot]:
+            break
+        column = matrix[:, [pivot]].toarray()[:, 0] - columns[:, :rank] @ columns[pivot, :rank]
+        columns[:, rank] = column / np.sqrt(left[pivot])
+        left = np.maximum(left - columns[:, rank] ** 2, 0.0)
+        left[pivot] = 0.0
+    else:
+        rank = most
+    columns = columns[:, :rank]
+    if np.any(left > tolerance):
+        return None, matrix
+    worst = np.abs(columns @ columns.T - matrix.toarray())
+    scale = np.sqrt(diagonal)
+    if np.any(worst > system.size * _EPS * np.outer(scale, scale)):
+        return None, matrix
+    return columns, None

@@ -12,7 +12,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from mdof.eigen.quadratic import Roots, solve_dense
+from mdof.eigen.quadratic import Roots, solve_complete
 from mdof.eigen.verify import judge
 from mdof.errors import UnverifiedError
 
@@ -37,7 +37,7 @@ def solve_floating(problem: NormalisedProblem) -> tuple[Roots, NDArray[np.float6
     """
     held = problem.sigma[problem.sigma > 0]
     middle = float(np.sqrt(held.min() * held.max())) if len(held) else 1.0
-    start = solve_dense(_matched(problem, middle))
+    start = solve_complete(_matched(problem, middle))
     values, vectors = start.values.copy(), start.vectors.copy()
     turning = np.nonzero(values.imag > 0)[0]
     for index in turning:
@@ -51,7 +51,7 @@ def solve_floating(problem: NormalisedProblem) -> tuple[Roots, NDArray[np.float6
         if len(turning):
             nearest = turning[np.argmin(np.abs(np.abs(values[turning]) - abs(values[index])))]
             reference[index] = abs(values[nearest])
-            near = solve_dense(_matched(problem, reference[index]))
+            near = solve_complete(_matched(problem, reference[index]))
             candidates = np.nonzero((near.values.imag == 0) & (near.values != 0))[0]
             if not len(candidates):
                 raise UnverifiedError(
@@ -93,7 +93,7 @@ def _own_reference(
 ) -> tuple[complex, NDArray[np.complex128]]:
     """Follow one oscillating root until its own |λ| is its reference, by full solves picked by shape."""
     for _ in range(_STEPS):
-        roots = solve_dense(_matched(problem, abs(value)))
+        roots = solve_complete(_matched(problem, abs(value)))
         turning = np.nonzero(roots.values.imag > 0)[0]
         if not len(turning):
             break
@@ -153,7 +153,7 @@ def _from_undamped(
     """Grow the loss factors from nothing, so that every mode keeps its identity."""
     values, vectors = start.values.copy(), start.vectors.copy()
     quiet = dataclasses.replace(problem, loss_rows=problem.loss_rows * 1e-3)
-    roots = solve_dense(_matched(quiet, float(np.sqrt(problem.sigma.min() * problem.sigma.max()))))
+    roots = solve_complete(_matched(quiet, float(np.sqrt(problem.sigma.min() * problem.sigma.max()))))
     following = np.nonzero(roots.values.imag > 0)[0]
     if len(following) != len(turning):
         raise UnverifiedError(

@@ -12,13 +12,48 @@ from mdof.errors import UnverifiedError
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
-__all__ = ["condense_massless", "mass_basis"]
+__all__ = ["condense_massless", "mass_basis", "turned"]
 
 _EPS = float(np.finfo(np.float64).eps)
 
 
-def mass_basis(mass: NDArray[np.float64]) -> tuple[NDArray[np.float64], int, float]:
-    """Columns T with ``Tᵀ M T = diag(I, 0)``, heavy ones first, their number, and how T may magnify rounding."""
+def turned(rows: Any, basis: NDArray[np.float64]) -> NDArray[np.float64]:
+    """``rows @ basis`` as a dense array; a diagonal basis or diagonal rows only scale."""
+    from scipy.sparse import issparse
+
+    if not rows.shape[0]:
+        return np.zeros((0, basis.shape[1]))
+    scale = _diagonal(basis)
+    if scale is not None:
+        return np.asarray((rows.toarray() if issparse(rows) else rows) * scale)
+    if not issparse(rows):
+        scale = _diagonal(rows)
+        if scale is not None:
+            return np.asarray(scale[:, None] * basis)
+    elif rows.nnz > 0.2 * rows.shape[0] * rows.shape[1]:
+        rows = rows.toarray()
+    return np.asarray(rows @ basis)
+
+
+def _diagonal(matrix: NDArray[np.float64]) -> NDArray[np.float64] | None:
+    """The diagonal of a square matrix that holds nothing else."""
+    if matrix.shape[0] != matrix.shape[1]:
+        return None
+    diagonal = np.diagonal(matrix)
+    return diagonal.copy() if np.count_nonzero(matrix) == np.count_nonzero(diagonal) else None
+
+
+def mass_basis(mass: Any) -> tuple[NDArray[np.float64], int, float]:
+    """Columns T with ``Tᵀ M T = diag(I, 0)``, heavy ones first, their number, and how T may magnify rounding.
+
+    Parameters
+    ----------
+    mass : sparse array, shape (n, n)
+    """
+    plain = mass.diagonal()
+    if mass.nnz == np.count_nonzero(plain) == len(plain) and np.all(plain > 0):
+        return np.diag(1.0 / np.sqrt(plain)), len(plain), 1.0
+    mass = mass.toarray()
     n = len(mass)
     light = ~mass.any(axis=0)
     index = np.concatenate([np.nonzero(~light)[0], np.nonzero(light)[0]])
@@ -66,7 +101,7 @@ def condense_massless(
     dampers: NDArray[np.float64],
     damping: NDArray[np.float64],
     extra_k: NDArray[np.float64] | None,
-    extra_c: NDArray[np.float64],
+    extra_c: NDArray[np.float64] | None,
     definite: bool,
 ) -> tuple[Any, ...]:
     """Condense massless coordinates that no damper moves; the others keep their first-order equation."""
@@ -75,7 +110,7 @@ def condense_massless(
     norms = np.linalg.norm(block, axis=1)
     block = block[norms > 0] / norms[norms > 0][:, None] if norms.any() else np.zeros((0, len(light)))
     parts = [block]
-    if extra_c[np.ix_(light, light)].any():
+    if extra_c is not None and extra_c[np.ix_(light, light)].any():
         symmetric = extra_c[np.ix_(light, light)]
         parts.append(symmetric / np.abs(symmetric).max())
     _, size, right = np.linalg.svd(np.vstack(parts), full_matrices=True)
@@ -83,7 +118,7 @@ def condense_massless(
     turn = np.eye(base.shape[1])
     turn[np.ix_(light, light)] = right.T
     base, springs, dampers = base @ turn, springs @ turn, dampers @ turn
-    extra_c = turn.T @ extra_c @ turn
+    extra_c = None if extra_c is None else turn.T @ extra_c @ turn
     extra_k = None if extra_k is None else turn.T @ extra_k @ turn
     kept = np.arange(heavy + rank)
     loose = np.arange(heavy + rank, base.shape[1])
@@ -116,17 +151,20 @@ def condense_massless(
                 extra_k = map_.T @ extra_k @ map_
         base = base[:, kept] + base[:, loose] @ follow
         dampers = dampers[:, kept]
-        extra_c = extra_c[np.ix_(kept, kept)]
+        extra_c = None if extra_c is None else extra_c[np.ix_(kept, kept)]
     if rank:
         # One damping unit for every light coordinate, in a power of two near the typical rate of the model.
         last = np.arange(heavy, heavy + rank)
-        own = (dampers[:, last].T * damping) @ dampers[:, last] + extra_c[np.ix_(last, last)]
+        own = (dampers[:, last].T * damping) @ dampers[:, last]
+        if extra_c is not None:
+            own = own + extra_c[np.ix_(last, last)]
         scale = 1.0 / np.sqrt(np.abs(np.diag(own)))
         base[:, last] *= scale
         springs[:, last] *= scale
         dampers[:, last] *= scale
-        extra_c[last] *= scale[:, None]
-        extra_c[:, last] *= scale
+        if extra_c is not None:
+            extra_c[last] *= scale[:, None]
+            extra_c[:, last] *= scale
         if extra_k is not None:
             extra_k[last] *= scale[:, None]
             extra_k[:, last] *= scale

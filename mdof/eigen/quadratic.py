@@ -14,11 +14,11 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from mdof.eigen.blocks import rotate_equal, uncoupled_blocks
+from mdof.eigen.choose import Solved, solve_block
 from mdof.eigen.clusters import average_clusters
-from mdof.eigen.oscillators import oscillator_bounds, single_oscillator
+from mdof.eigen.oscillators import oscillator_bounds
 from mdof.eigen.refine import refine
-from mdof.eigen.state_matrix import companion, energy_balanced
-from mdof.eigen.verify import judge
+from mdof.eigen.verify import judge, real_times
 from mdof.errors import UnverifiedError
 
 if TYPE_CHECKING:
@@ -26,7 +26,7 @@ if TYPE_CHECKING:
 
     from mdof.eigen.reduce import NormalisedProblem
 
-__all__ = ["Roots", "solve_dense"]
+__all__ = ["Roots", "solve_complete"]
 
 
 @dataclass(frozen=True, kw_only=True, slots=True, eq=False)
@@ -70,7 +70,7 @@ class Roots:
     method: str
 
 
-def solve_dense(problem: NormalisedProblem) -> Roots:
+def solve_complete(problem: NormalisedProblem, method: str = "auto") -> Roots:
     """All roots of the normalised problem, judged.
 
     Raises
@@ -83,22 +83,14 @@ def solve_dense(problem: NormalisedProblem) -> Roots:
     problem, turn = rotate_equal(problem)
     blocks = uncoupled_blocks(problem)
     size = problem.recover.shape[1]
-    found, places = [], []
-    for block in blocks:
-        if len(block) == 1 and problem.modal and problem.symmetric:
-            found.append(single_oscillator(problem, int(block[0])))
-        elif problem.skew_stiffness is not None:
-            found.append(companion(problem))
-        else:
-            found.append(energy_balanced(problem, block))
-        places.append(block)
-    values, vectors, lefts, block_of, partner, states = [], [], [], [], [], []
+    solved = [solve_block(problem, block, method) for block in blocks]
+    found = [entry.roots for entry in solved]
+    values, lefts, block_of, partner, states = [], [], [], [], []
+    z = np.zeros((size, sum(len(part.values) for part in found)), dtype=np.complex128)
     offset = 0
-    for number, (part, place) in enumerate(zip(found, places, strict=True)):
-        wide = np.zeros((size, len(part.values)), dtype=np.complex128)
-        wide[place] = part.vectors
+    for number, (part, place) in enumerate(zip(found, blocks, strict=True)):
+        z[place, offset : offset + len(part.values)] = part.vectors
         values.append(part.values)
-        vectors.append(wide)
         block_of.append(np.full(len(part.values), number))
         partner.append(np.where(part.partner >= 0, part.partner + offset, -1))
         states.append(part.state)
@@ -106,7 +98,6 @@ def solve_dense(problem: NormalisedProblem) -> Roots:
             lefts.append(part.left)
         offset += len(part.values)
     roots = np.concatenate(values)
-    z = np.hstack(vectors)
     left = np.hstack(lefts) if lefts else None
     if not (np.all(np.isfinite(roots)) and np.all(np.isfinite(z))):
         raise UnverifiedError(
@@ -123,7 +114,7 @@ def solve_dense(problem: NormalisedProblem) -> Roots:
     return Roots(
         values=roots,
         computed=computed,
-        vectors=z if turn is None else turn @ z,
+        vectors=z if turn is None else real_times(turn, z),
         left=left if turn is None or left is None else turn @ left,
         bounds=bounds,
         backward=judgement.backward,
@@ -132,21 +123,26 @@ def solve_dense(problem: NormalisedProblem) -> Roots:
         clustered=clustered,
         slope=judgement.slope,
         count=sum(part.count for part in found),
-        method=_describe(problem, blocks),
+        method=_describe(problem, solved),
     )
 
 
-def _describe(problem: NormalisedProblem, blocks: list[NDArray[np.int64]]) -> str:
-    largest = max(len(block) for block in blocks)
-    if problem.skew_stiffness is not None:
-        return "dense, state matrix of an unsymmetric system"
-    if not problem.modal:
-        return "dense, energy-balanced state matrix with first-order states"
-    if largest == 1 and problem.symmetric:
-        return "proportional: every undamped mode keeps its own two roots"
-    alone = sum(len(block) == 1 for block in blocks) if problem.symmetric else 0
-    note = f", {alone} modes that damping leaves uncoupled" if alone else ""
-    return f"dense, energy-balanced state matrix{note}"
+def _describe(problem: NormalisedProblem, solved: list[Solved]) -> str:
+    """What was done, in words."""
+    kernels = [entry.kernel for entry in solved]
+    words = []
+    few, dense = kernels.count("few dampers"), kernels.count("state matrix")
+    alone = kernels.count("proportional")
+    if few:
+        words.append("secular form of few dampers")
+    if dense:
+        words.append(f"dense, energy-balanced state matrix{'' if problem.modal else ' with first-order states'}")
+    if not (few or dense):
+        words.append("proportional: every undamped mode keeps its own two roots" if alone else f"dense, {kernels[0]}")
+    elif alone:
+        words.append(f"{alone} mode{'' if alone == 1 else 's'} that damping leaves uncoupled")
+    reasons = [f"secular form given up: {entry.fallback}" for entry in solved if entry.fallback]
+    return ", ".join([*words, *dict.fromkeys(reasons)])
 
 
 def _normalised(vectors: NDArray[np.complex128]) -> NDArray[np.complex128]:

@@ -11,8 +11,8 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from mdof.eigen.dampers import damper_rows, damper_rows_in_modes
-from mdof.eigen.mass import condense_massless, mass_basis
+from mdof.eigen.dampers import damper_rows, damper_rows_in_modes, factored_damping
+from mdof.eigen.mass import condense_massless, mass_basis, turned
 from mdof.eigen.springs import JACOBI_LIMIT, free_motions, spring_modes, symmetric_factors
 
 if TYPE_CHECKING:
@@ -54,6 +54,11 @@ class NormalisedProblem:
     modal : bool
         True where heavy coordinates are already the undamped modes, so that W is the identity's first columns.
     symmetric, passive : bool
+    general_rows : int
+        The last so many damper rows are factors of a damping matrix given as numbers.
+    own_damping : ndarray, shape (m,), or None
+        What proportional terms add to the diagonal of ``rowsᵀ diag(signs) rows``; None where D has other parts, or
+        coordinates are not the undamped modes.
     """
 
     recover: NDArray[np.float64]
@@ -73,6 +78,8 @@ class NormalisedProblem:
     modal: bool
     symmetric: bool
     passive: bool
+    general_rows: int = 0
+    own_damping: NDArray[np.float64] | None = None
 
     @property
     def stiffness(self) -> NDArray[np.float64]:
@@ -89,23 +96,34 @@ def normalise(system: System) -> NormalisedProblem:
     UnverifiedError
         If the mass matrix is not positive semidefinite, or a massless coordinate is held by nothing.
     """
-    base, heavy, amplification = mass_basis(system.mass.toarray())
+    base, heavy, amplification = mass_basis(system.mass)
     light_count = base.shape[1] - heavy
-    springs = (base.T @ system.spring_columns).T if system.spring_columns.shape[1] else np.zeros((0, base.shape[1]))
-    dampers = (base.T @ system.damper_columns).T if system.damper_columns.shape[1] else np.zeros((0, base.shape[1]))
-    springs, dampers = np.asarray(springs), np.asarray(dampers)
+    springs, dampers = (turned(columns.T, base) for columns in (system.spring_columns, system.damper_columns))
     root_k = np.sqrt(np.abs(system.stiffness))
     spring_rows = root_k[:, None] * springs
-    extra_k = None if system.extra_stiffness is None else base.T @ (system.extra_stiffness @ base)
-    extra_c = np.zeros((base.shape[1],) * 2)
-    for part in (system.extra_damping, system.gyroscopic):
+    extra_k = None if system.extra_stiffness is None else turned(turned(system.extra_stiffness, base).T, base).T
+    columns, rest = factored_damping(system)
+    general = np.zeros((0, base.shape[1])) if columns is None else turned(columns.T, base)
+    extra_c = None
+    for part in (rest, system.gyroscopic):
         if part is not None:
-            extra_c = extra_c + base.T @ (part @ base)
+            product = turned(turned(part, base).T, base).T
+            extra_c = product if extra_c is None else extra_c + product
     definite = extra_k is None and bool(np.all(system.stiffness >= 0))
     if light_count:
+        own = len(dampers)
         base, springs, dampers, extra_k, extra_c, heavy = condense_massless(
-            base, heavy, springs, system.stiffness, dampers, system.damping, extra_k, extra_c, definite
+            base,
+            heavy,
+            springs,
+            system.stiffness,
+            np.vstack([dampers, general]),
+            np.concatenate([system.damping, np.ones(len(general))]),
+            extra_k,
+            extra_c,
+            definite,
         )
+        dampers, general = dampers[:own], dampers[own:]
         spring_rows = root_k[:, None] * springs
     size = base.shape[1]
     skew = None
@@ -125,13 +143,17 @@ def normalise(system: System) -> NormalisedProblem:
     if modal:
         basis = np.hstack([W, N])
         rows, loss = damper_rows_in_modes(system, rows, loss, left, sigma, basis, root_k)
-        base = base @ basis
-        extra_c = basis.T @ extra_c @ basis
+        general = general @ basis
+        base = turned(base, basis)
+        extra_c = None if extra_c is None else basis.T @ extra_c @ basis
         spring_rows = spring_rows @ basis
         skew = None if skew is None else basis.T @ skew @ basis
         eye = np.eye(size)
         W, N = eye[:, : len(sigma)], eye[:, len(sigma) :]
-    damping = (rows.T * signs) @ rows + extra_c
+    rows, signs = np.vstack([rows, general]), np.concatenate([signs, np.ones(len(general))])
+    damping = (rows.T * signs) @ rows
+    if extra_c is not None:
+        damping = damping + extra_c
     if system.mass_proportional:
         damping[np.arange(heavy), np.arange(heavy)] += system.mass_proportional
     if system.stiffness_proportional:
@@ -143,13 +165,13 @@ def normalise(system: System) -> NormalisedProblem:
     passive = (
         symmetric
         and bool(np.all(sign > 0))
-        and extra_c.any() == np.False_
+        and extra_c is None
         and bool(np.all(signs > 0))
         and system.mass_proportional >= 0
         and system.stiffness_proportional >= 0
         and bool(np.all(system.loss_factor >= 0))
     )
-    if symmetric and not passive and extra_c.any():
+    if symmetric and not passive and extra_c is not None:
         lowest = float(np.linalg.eigvalsh(damping)[0])
         passive = bool(np.all(sign > 0)) and lowest >= -size * _EPS * float(np.abs(damping).max(initial=0.0))
     return NormalisedProblem(
@@ -170,4 +192,13 @@ def normalise(system: System) -> NormalisedProblem:
         modal=modal,
         symmetric=symmetric,
         passive=passive,
+        general_rows=len(general),
+        own_damping=_own_damping(system, sigma, size) if modal and extra_c is None else None,
     )
+
+
+def _own_damping(system: System, sigma: NDArray[np.float64], size: int) -> NDArray[np.float64]:
+    """Damping that proportional terms give each undamped mode, shape (m,) [1/s]."""
+    result = np.full(size, system.mass_proportional)
+    result[: len(sigma)] += system.stiffness_proportional * sigma**2
+    return result

@@ -8,11 +8,12 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from mdof.eigen.blocks import rotate_equal
+from mdof.eigen.choose import METHODS
 from mdof.eigen.floating import solve_floating
-from mdof.eigen.quadratic import solve_dense
+from mdof.eigen.quadratic import solve_complete
 from mdof.eigen.reduce import NormalisedProblem, normalise
 from mdof.eigen.threads import suited_threads
-from mdof.eigen.verify import GATE
+from mdof.eigen.verify import GATE, real_times
 from mdof.errors import UnverifiedError, UsageError
 from mdof.modes.mode import DampedModes, Verification
 from mdof.modes.pairing import Pairing, pair_roots
@@ -42,7 +43,8 @@ def solve(system: System, count: int | None = None, near: float = 0.0, method: s
         How many modes to return; default all.
     near : float [rad/s]
         With ``count``: return the modes whose natural frequency is nearest to this.
-    method : {"auto", "dense"}
+    method : {"auto", "dense", "few dampers"}
+        ``"auto"`` takes the cheapest kernel that fits, block by block; the others force one where it is defined.
 
     Returns
     -------
@@ -57,8 +59,8 @@ def solve(system: System, count: int | None = None, near: float = 0.0, method: s
     """
     if not isinstance(system, System):
         raise UsageError(f"solve takes a System, not {type(system).__name__}; make one with mdof.assemble(model)")
-    if method not in ("auto", "dense"):
-        raise UsageError(f"method must be 'auto' or 'dense', not {method!r}")
+    if method not in METHODS:
+        raise UsageError(f"method must be one of {', '.join(map(repr, METHODS))}, not {method!r}")
     if count is not None and (isinstance(count, bool) or not isinstance(count, (int, np.integer)) or count < 1):
         raise UsageError(f"count must be a positive whole number, not {count!r}")
     if count is None and near:
@@ -68,7 +70,7 @@ def solve(system: System, count: int | None = None, near: float = 0.0, method: s
     quiet = np.errstate(over="ignore", invalid="ignore", divide="ignore", under="ignore")
     with quiet, suited_threads(system.size):
         try:
-            return _Solution(system).modes(count, float(near))
+            return _Solution(system, method).modes(count, float(near))
         except np.linalg.LinAlgError as error:
             raise UnverifiedError(
                 f"the eigenvalue computation broke down ({error})", "look for values near the ends of the number range"
@@ -78,19 +80,21 @@ def solve(system: System, count: int | None = None, near: float = 0.0, method: s
 class _Solution:
     """The steps of one solve."""
 
-    def __init__(self, system: System) -> None:
+    def __init__(self, system: System, method: str) -> None:
         self.system = system
         self.problem: NormalisedProblem = rotate_equal(normalise(system))[0]
         self.references: NDArray[np.float64] | None = None
         if len(self.problem.loss_rows):
             self.roots, self.references = solve_floating(self.problem)
         else:
-            self.roots = solve_dense(self.problem)
+            self.roots = solve_complete(self.problem, method)
         self.pairing: Pairing = pair_roots(self.roots, self.problem.heavy)
         physical = PhysicalResidual(system, self.references)
         roots = self.roots
         polished, self.reduced, errors = physical.polish(
-            roots.computed, self.problem.recover @ self.pairing.vectors, np.where(roots.clustered, 0.0, roots.bounds)
+            roots.computed,
+            real_times(self.problem.recover, self.pairing.vectors),
+            np.where(roots.clustered, 0.0, roots.bounds),
         )
         self.roots = dataclasses.replace(
             roots,

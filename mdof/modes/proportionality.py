@@ -153,6 +153,7 @@ def _couplers(
     stated = np.nonzero(lossy & np.isfinite(system.loss_reference))[0]
     floating = np.nonzero(lossy & ~np.isfinite(system.loss_reference))[0]
     names = [*system.damper_names, *(system.spring_names[index] for index in stated)]
+    names += ["matrix C"] * problem.general_rows
     rows = problem.damper_rows @ plain.shapes
     signs = problem.damper_signs
     names += [system.spring_names[index] for index in floating]

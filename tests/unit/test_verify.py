@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 import mdof
-from mdof.eigen.quadratic import solve_dense
+from mdof.eigen.quadratic import solve_complete
 from mdof.eigen.reduce import normalise
 from mdof.eigen.verify import check_completeness, judge, residuals
 from mdof.errors import UnverifiedError
@@ -57,7 +57,7 @@ def test_residuals_are_those_of_the_quadratic() -> None:
 
 def test_the_bound_grows_with_an_error_that_is_put_in() -> None:
     problem = problem_of(2)
-    roots = solve_dense(problem)
+    roots = solve_complete(problem)
     clean = judge(problem, roots.values, roots.vectors)
     off = judge(problem, roots.values * (1 + 1e-9), roots.vectors)
     assert np.all(off.bound >= 0.5e-9 * np.abs(roots.values))
@@ -70,7 +70,7 @@ def test_left_vectors_serve_unsymmetric_problems() -> None:
     """The eigenvalue's first-order change is yᵀ dQ x over yᵀ Q' x: against a finite difference."""
     rng = np.random.default_rng(4)
     M, C, K = np.eye(3), 0.2 * np.eye(3) + np.diag([1.0, 1.0], 1), 9 * np.eye(3) + rng.normal(size=(3, 3))
-    roots = solve_dense(normalise(mdof.System.from_matrices(M, C, K)))
+    roots = solve_complete(normalise(mdof.System.from_matrices(M, C, K)))
     assert roots.left is not None
     judged = judge(normalise(mdof.System.from_matrices(M, C, K)), roots.values, roots.vectors, roots.left)
     assert np.all(judged.backward < 1e-14)
