@@ -79,6 +79,8 @@ def few_dampers(squares: Real, own: Real, columns: Real) -> BlockRoots:
         extra_lead, extra_force = _leading(form, extra)
         lead, force = np.concatenate([lead, extra_lead]), np.vstack([force, extra_force])
     _check_sums(form, swinging, rates)
+    # The last step moved the roots; the forces follow.
+    force = _forces(form, swinging, lead)
     found = np.concatenate([swinging, real_values])
     real_lead, real_force = _leading(form, real_values)
     vectors = form.vectors(found, np.vstack([force, real_force]), np.concatenate([lead, real_lead]))
@@ -222,9 +224,14 @@ def _leading(form: Secular, values: Complex, lead: Index | None = None) -> tuple
         lead = (
             np.argmax(np.abs(form.vectors(values, rough[:, 0])), axis=0) if len(values) else np.zeros(0, dtype=np.int64)
         )
+    return lead, _forces(form, values, lead)
+
+
+def _forces(form: Secular, values: Complex, lead: Index) -> Complex:
+    """g = G_k⁻¹ v_k at given roots and leading modes, shape (m, r)."""
     whole, _ = form.sums(values, lead, slopes=False)
     force = np.linalg.solve(whole, form.columns[lead][:, :, None].astype(np.complex128))[:, :, 0]
-    return lead, np.asarray(force, dtype=np.complex128)
+    return np.asarray(force, dtype=np.complex128)
 
 
 def _check_sums(form: Secular, swinging: Complex, rates: Real) -> None:

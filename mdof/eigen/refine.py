@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from mdof.eigen.verify import judge
+from mdof.eigen.verify import measure
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -29,21 +29,27 @@ def refine(
 
     The steps recover small roots beside large ones; roots about to collide keep their values.
     """
-    vectors = vectors.copy()
+    values, vectors = values.copy(), vectors.copy()
     left = None if left is None else left.copy()
+    active = np.nonzero(values != 0)[0]
     for turn in range(_REFINEMENTS):
-        judgement = judge(problem, values, vectors, left)
-        wanted = (np.abs(judgement.step) > 0.5 * _EPS * np.abs(values)) & (values != 0)
-        wanted &= np.abs(judgement.step) < 0.05 * _gaps(values)
-        moved = values + np.where(wanted, judgement.step, 0.0)
-        values = np.where(values.imag == 0, moved.real, moved)
-        rough = (judgement.backward > 0.25 * len(vectors) * _EPS) & (values != 0)
-        if turn == _REFINEMENTS - 1 or not (rough.any() or wanted.any()):
+        seen = measure(problem, values[active], vectors[:, active], None if left is None else left[:, active])
+        old = values[active]
+        wanted = np.abs(seen.step) > 0.5 * _EPS * np.abs(old)
+        wanted[wanted] &= np.abs(seen.step[wanted]) < 0.05 * _gaps(values, active[wanted])
+        moved = old + np.where(wanted, seen.step, 0.0)
+        values[active] = np.where(old.imag == 0, moved.real, moved)
+        rough = seen.backward > 0.25 * len(vectors) * _EPS
+        if turn == _REFINEMENTS - 1:
             break
-        for index in np.nonzero(rough)[0]:
+        for index in active[rough]:
             vectors[:, index] = _inverse_step(problem, values[index], vectors[:, index], transposed=False)
             if left is not None:
                 left[:, index] = _inverse_step(problem, values[index], left[:, index], transposed=True)
+        # Steps of a few roundings are as good as none.
+        active = active[rough | (wanted & (np.abs(seen.step) > 16 * _EPS * np.abs(old)))]
+        if not len(active):
+            break
     return values, vectors, left
 
 
@@ -73,10 +79,10 @@ def _inverse_step(
     return np.asarray(new if better else vector, dtype=np.complex128)
 
 
-def _gaps(values: NDArray[np.complex128]) -> NDArray[np.float64]:
-    """Distance of every root to the nearest other one, its own conjugate included, exact zero roots left out."""
+def _gaps(values: NDArray[np.complex128], which: NDArray[np.int64]) -> NDArray[np.float64]:
+    """Distance of chosen roots to the nearest other one, own conjugates included, exact zero roots left out."""
     both = np.concatenate([np.where(values == 0, np.inf, values), values[values.imag > 0].conj()])
-    distance = np.abs(values[:, None] - both[None, :])
-    distance[np.arange(len(values)), np.arange(len(values))] = np.inf
-    result: NDArray[np.float64] = distance.min(axis=1)
-    return np.where(np.isfinite(result), result, np.abs(values))
+    distance = np.abs(values[which][:, None] - both[None, :])
+    distance[np.arange(len(which)), which] = np.inf
+    result: NDArray[np.float64] = distance.min(axis=1, initial=np.inf)
+    return np.where(np.isfinite(result), result, np.abs(values[which]))

@@ -19,7 +19,7 @@ if TYPE_CHECKING:
 
     from mdof.eigen.reduce import NormalisedProblem
 
-__all__ = ["GATE", "Judgement", "check_completeness", "damping_times", "judge", "real_times", "residuals"]
+__all__ = ["GATE", "Judgement", "check_completeness", "damping_times", "judge", "measure", "real_times"]
 
 _EPS = float(np.finfo(np.float64).eps)
 #: Largest accepted backward error over n times the unit roundoff, in the manner of LAPACK's test programs.
@@ -35,7 +35,6 @@ class Judgement:
     backward: NDArray[np.float64]
     bound: NDArray[np.float64]
     slope: NDArray[np.complex128]
-    step: NDArray[np.complex128]
 
 
 def damping_times(
@@ -63,22 +62,13 @@ def real_times(matrix: NDArray[np.float64], vectors: NDArray[np.complex128]) -> 
     return result
 
 
-def residuals(
-    problem: NormalisedProblem,
-    values: NDArray[np.complex128],
-    vectors: NDArray[np.complex128],
-    reference: NDArray[np.float64] | None = None,
-) -> NDArray[np.complex128]:
-    """Q(λ) z for every column, shape (m, n_roots), from the factors."""
-    return _residuals(problem, values, vectors, damping_times(problem, vectors, reference))
-
-
 def _residuals(
     problem: NormalisedProblem,
     values: NDArray[np.complex128],
     vectors: NDArray[np.complex128],
     damped: NDArray[np.complex128],
 ) -> NDArray[np.complex128]:
+    """Q(λ) z for every column, shape (m, q), from the factors."""
     result = values * damped
     squares = problem.sigma**2 * problem.sign
     if problem.modal:
@@ -109,32 +99,62 @@ def judge(
         Left vectors, unconjugated transposes; the right ones serve for symmetric problems.
     """
     other = vectors if left is None else left
+    seen = measure(problem, values, vectors, left, reference)
     size = np.abs(values)
+    effort = _effort(problem, size, np.abs(vectors), np.abs(other) if left is not None else None, vectors, other)
+    if problem.normwise:
+        length = np.linalg.norm(other, axis=0) * np.linalg.norm(vectors, axis=0)
+        stiffness_norm, damping_norm = _norms(problem, reference)
+        # Rayleigh quotients of vectors with error e are off by e², which the residual measures through the norms.
+        effort += (stiffness_norm + size * damping_norm) * length
+    with np.errstate(divide="ignore", invalid="ignore"):
+        uncertain = np.abs(seen.numerator) + (len(vectors) + 8) * _EPS * problem.amplification * effort
+        bound = uncertain / np.abs(seen.slope)
+    # The second factor of the forward error is the residual seen by all other modes.
+    bound = np.where(np.isfinite(bound), bound, np.inf) + _second_order(values, other, seen.rest, seen.slope)
+    return Judgement(backward=seen.backward, bound=bound, slope=seen.slope)
+
+
+@dataclass(frozen=True, kw_only=True, slots=True, eq=False)
+class Measured:
+    """Residuals r = Q(λ)x of shape (m, q) and, per root, yᵀr, yᵀQ'x, backward error and Rayleigh step on λ."""
+
+    rest: NDArray[np.complex128]
+    numerator: NDArray[np.complex128]
+    slope: NDArray[np.complex128]
+    backward: NDArray[np.float64]
+    step: NDArray[np.complex128]
+
+
+def measure(
+    problem: NormalisedProblem,
+    values: NDArray[np.complex128],
+    vectors: NDArray[np.complex128],
+    left: NDArray[np.complex128] | None = None,
+    reference: NDArray[np.float64] | None = None,
+) -> Measured:
+    """Residuals and Rayleigh steps, without bounds; the parameters are those of :func:`judge`."""
+    other = vectors if left is None else left
     damped = damping_times(problem, vectors, reference)
     rest = _residuals(problem, values, vectors, damped)
     heavy = slice(0, problem.heavy)
     slope = 2 * values * _dots(other[heavy], vectors[heavy]) + _dots(other, damped)
     numerator = _dots(other, rest)
+    stiffness_norm, damping_norm = _norms(problem, reference)
+    size = np.abs(values)
+    scale = (size**2 + size * damping_norm + stiffness_norm) * np.linalg.norm(vectors, axis=0)
     with np.errstate(divide="ignore", invalid="ignore"):
         step = np.where(slope != 0, -numerator / slope, 0.0)
-    # Rayleigh quotients of eigenvectors with error e are off by e², which the residual measures through the norms.
-    damping_norm = float(np.linalg.norm(problem.damping, axis=0).max(initial=0.0))
+        backward = np.where(scale > 0, np.linalg.norm(rest, axis=0) / scale, 0.0)
+    return Measured(rest=rest, numerator=numerator, slope=slope, backward=backward, step=step)
+
+
+def _norms(problem: NormalisedProblem, reference: NDArray[np.float64] | None) -> tuple[float, float]:
+    """2-norm of the normalised K and a lower bound on that of D."""
+    damping = float(np.linalg.norm(problem.damping, axis=0).max(initial=0.0))
     if len(problem.loss_rows) and reference is not None:
-        damping_norm += float(np.max(np.sum(problem.loss_rows**2, axis=0), initial=0.0) / max(reference.min(), 1e-300))
-    stiffness_norm = float((problem.sigma**2).max(initial=0.0))
-    length, length_left = np.linalg.norm(vectors, axis=0), np.linalg.norm(other, axis=0)
-    effort = _effort(problem, size, np.abs(vectors), np.abs(other) if left is not None else None, vectors, other)
-    if problem.normwise:
-        effort += (stiffness_norm + size * damping_norm) * length_left * length
-    scale = (size**2 + size * damping_norm + stiffness_norm) * length
-    rough = np.linalg.norm(rest, axis=0)
-    with np.errstate(divide="ignore", invalid="ignore"):
-        backward = np.where(scale > 0, rough / scale, 0.0)
-        uncertain = np.abs(numerator) + (len(vectors) + 8) * _EPS * problem.amplification * effort
-        bound = uncertain / np.abs(slope)
-    # The second factor of the forward error is the residual seen by all other modes.
-    bound = np.where(np.isfinite(bound), bound, np.inf) + _second_order(values, other, rest, slope)
-    return Judgement(backward=backward, bound=bound, slope=slope, step=step)
+        damping += float(np.max(np.sum(problem.loss_rows**2, axis=0), initial=0.0) / max(reference.min(), 1e-300))
+    return float((problem.sigma**2).max(initial=0.0)), damping
 
 
 def _dots(first: NDArray[Any], second: NDArray[Any]) -> NDArray[Any]:

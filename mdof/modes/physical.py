@@ -6,6 +6,8 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
+from mdof.eigen.verify import real_times
+
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
@@ -47,12 +49,12 @@ class PhysicalResidual:
             weight = np.where(floating, system.loss_factor * system.stiffness, 0.0)
             drag = drag + (system.spring_columns @ (weight[:, None] * stretch)) / self.references[index]
         drag = drag + system.damper_columns @ (system.damping[:, None] * (system.damper_columns.T @ vectors))
-        inertia = system.mass @ vectors
+        inertia = _times(system.mass, vectors)
         if system.extra_stiffness is not None:
-            elastic = elastic + system.extra_stiffness @ vectors
+            elastic = elastic + _times(system.extra_stiffness, vectors)
         for part in (system.extra_damping, system.gyroscopic):
             if part is not None:
-                drag = drag + part @ vectors
+                drag = drag + _times(part, vectors)
         return inertia, drag + system.mass_proportional * inertia + system.stiffness_proportional * elastic, elastic
 
     def backward_errors(
@@ -122,6 +124,13 @@ class PhysicalResidual:
             step = complex(step).real
         moved = value + step if abs(step) <= freedom else value
         return complex(moved), new / length
+
+
+def _times(matrix: Any, vectors: NDArray[np.complex128]) -> NDArray[np.complex128]:
+    """A real sparse matrix times complex columns; as a dense product where it is hardly sparse."""
+    if matrix.nnz > 0.1 * matrix.shape[0] * matrix.shape[1] and vectors.shape[1] > 1:
+        return real_times(matrix.toarray(), vectors)
+    return np.asarray(matrix @ vectors)
 
 
 def _norm(matrix: Any) -> float:

@@ -43,6 +43,8 @@ class Shortcut:
         ΦᵀHΦ of those, to be divided by a reference.
     commutator : float
         ‖CM⁻¹K − KM⁻¹C‖ over ‖KM⁻¹C‖, Frobenius, in mass-normalised coordinates.
+    own_coordinates : bool
+        The undamped modes are the problem's coordinates, so that ``shapes`` is the identity.
     """
 
     shapes: NDArray[np.float64]
@@ -50,6 +52,7 @@ class Shortcut:
     damping: NDArray[np.float64]
     loss: NDArray[np.float64]
     commutator: float
+    own_coordinates: bool
 
     def ratios(self) -> NDArray[np.float64]:
         """Shortcut damping ratio of every undamped mode; NaN for free motions."""
@@ -59,7 +62,7 @@ class Shortcut:
 
     def nearest(self, vectors: NDArray[np.complex128], heavy: int) -> NDArray[np.int64]:
         """Index of the undamped mode nearest in shape to each root vector."""
-        like = np.abs(self.shapes[:heavy].T @ vectors[:heavy])
+        like = np.abs(vectors) if self.own_coordinates else np.abs(self.shapes[:heavy].T @ vectors[:heavy])
         return np.asarray(np.argmax(like, axis=0), dtype=np.int64)
 
 
@@ -77,8 +80,8 @@ def shortcut(problem: NormalisedProblem) -> Shortcut:
         squares[np.abs(squares) <= size * 1e-15 * np.abs(squares).max(initial=0.0)] = 0.0
         shapes = np.vstack([modes, follow @ modes])
     symmetric = 0.5 * (problem.damping + problem.damping.T)
-    damping = shapes.T @ symmetric @ shapes
-    rows = problem.loss_rows @ shapes
+    damping = symmetric if problem.modal else shapes.T @ symmetric @ shapes
+    rows = problem.loss_rows if problem.modal else problem.loss_rows @ shapes
     gap = damping * (squares[:, None] - squares[None, :])
     weight = float(np.linalg.norm(damping * squares[:, None]))
     return Shortcut(
@@ -86,6 +89,7 @@ def shortcut(problem: NormalisedProblem) -> Shortcut:
         frequencies=np.sqrt(np.maximum(squares, 0.0)),
         damping=damping,
         loss=rows.T @ rows,
+        own_coordinates=problem.modal,
         commutator=float(np.linalg.norm(gap)) / weight if weight > 0 else 0.0,
     )
 
@@ -154,11 +158,14 @@ def _couplers(
     floating = np.nonzero(lossy & ~np.isfinite(system.loss_reference))[0]
     names = [*system.damper_names, *(system.spring_names[index] for index in stated)]
     names += ["matrix C"] * problem.general_rows
-    rows = problem.damper_rows @ plain.shapes
+    rows = problem.damper_rows if plain.own_coordinates else problem.damper_rows @ plain.shapes
+    loss = problem.loss_rows if plain.own_coordinates else problem.loss_rows @ plain.shapes
     signs = problem.damper_signs
     names += [system.spring_names[index] for index in floating]
     typical = float(np.median(plain.frequencies[plain.frequencies > 0])) if np.any(plain.frequencies > 0) else 1.0
-    rows = np.vstack([rows, problem.loss_rows @ plain.shapes / np.sqrt(typical)])
+    rows = np.vstack(
+        [rows, loss / np.sqrt(typical)]
+    )
     signs = np.concatenate([signs, np.ones(len(floating))])
     chosen = np.unique(undamped)
     squares = plain.frequencies**2
