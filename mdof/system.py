@@ -123,6 +123,15 @@ class System:
         return tuple(f"{body}.{direction}" for body, direction in pairs)
 
     @cached_property
+    def own_coordinates(self) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+        """For every reduced coordinate of a body: the described coordinate that it is, and its own index."""
+        entries = self.recovery.tocoo()
+        single = np.bincount(entries.row, minlength=entries.shape[0]) == 1
+        exact = single[entries.row] & (entries.data == 1.0)
+        column, first = np.unique(entries.col[exact], return_index=True)
+        return entries.row[exact][first].astype(np.int64), column.astype(np.int64)
+
+    @cached_property
     def M(self) -> Any:
         """Mass matrix, csc_array, shape (n, n)."""
         return self.mass

@@ -79,9 +79,10 @@ def _equal(squares: NDArray[np.float64], size: int) -> list[NDArray[np.int64]]:
 
 def connected(coupled: NDArray[np.bool_]) -> list[NDArray[np.int64]]:
     """Connected components of a symmetric adjacency matrix."""
-    left = np.ones(len(coupled), dtype=bool)
-    blocks = []
-    for start in range(len(coupled)):
+    alone = coupled.sum(axis=1) - np.diagonal(coupled) == 0
+    left = ~alone
+    blocks = [np.array([index]) for index in np.nonzero(alone)[0]]
+    for start in np.nonzero(left)[0]:
         if not left[start]:
             continue
         reached = np.zeros(len(coupled), dtype=bool)
@@ -92,4 +93,4 @@ def connected(coupled: NDArray[np.bool_]) -> list[NDArray[np.int64]]:
             reached = reached | frontier
         left &= ~reached
         blocks.append(np.nonzero(reached)[0])
-    return blocks
+    return sorted(blocks, key=lambda block: int(block[0]))

@@ -41,6 +41,8 @@ def average_clusters(
         touches_axis = (own_values.imag > 0) & (own_values.imag <= reach)
         near_mirror = np.abs(own_values.conj()[:, None] - own_values[None, :]) <= reach[:, None] + reach[None, :]
         near |= near_mirror & (touches_axis[:, None] | touches_axis[None, :])
+        if np.count_nonzero(near) == len(own) and not touches_axis.any():
+            continue
         for group in connected(near):
             members = own[group]
             on_axis = bool(np.any(touches_axis[group])) or bool(np.all(values[members].imag == 0))

@@ -87,10 +87,13 @@ def factored_damping(system: System) -> tuple[NDArray[np.float64] | None, Any]:
     matrix = system.extra_damping
     if matrix is None:
         return None, None
-    diagonal = matrix.diagonal()
-    largest = float(diagonal.max(initial=0.0))
     most = system.size // _FEW
-    if most == 0 or largest <= 0 or np.any(diagonal < 0) or abs(matrix - matrix.T).max() > 4 * _EPS * largest:
+    if most == 0:
+        return None, matrix
+    full = matrix.toarray()
+    diagonal = np.diagonal(full)
+    largest = float(diagonal.max(initial=0.0))
+    if largest <= 0 or np.any(diagonal < 0) or np.abs(full - full.T).max() > 4 * _EPS * largest:
         return None, matrix
     tolerance = system.size * _EPS * diagonal
     left = diagonal.copy()
@@ -99,7 +102,7 @@ def factored_damping(system: System) -> tuple[NDArray[np.float64] | None, Any]:
         pivot = int(np.argmax(np.where(diagonal > 0, left / np.where(diagonal > 0, diagonal, 1.0), 0.0)))
         if left[pivot] <= tolerance[pivot]:
             break
-        column = matrix[:, [pivot]].toarray()[:, 0] - columns[:, :rank] @ columns[pivot, :rank]
+        column = full[:, pivot] - columns[:, :rank] @ columns[pivot, :rank]
         columns[:, rank] = column / np.sqrt(left[pivot])
         left = np.maximum(left - columns[:, rank] ** 2, 0.0)
         left[pivot] = 0.0
@@ -108,7 +111,7 @@ def factored_damping(system: System) -> tuple[NDArray[np.float64] | None, Any]:
     columns = columns[:, :rank]
     if np.any(left > tolerance):
         return None, matrix
-    worst = np.abs(columns @ columns.T - matrix.toarray())
+    worst = np.abs(columns @ columns.T - full)
     scale = np.sqrt(diagonal)
     if np.any(worst > system.size * _EPS * np.outer(scale, scale)):
         return None, matrix

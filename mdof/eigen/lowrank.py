@@ -30,6 +30,8 @@ _ABERTH_STEPS = 80
 _GRID_PER_DECADE = 48
 #: Roots closer than this, relative to their size, are one root found twice.
 _SAME = 1e-9
+#: Closer than this they collide for practical purposes, and their mean over an invariant subspace is wanted.
+_CLOSE = 1e-6
 #: A leading component below this share of the largest one leads no longer.
 _LEAST_LEAD = 0.03
 
@@ -78,6 +80,8 @@ def few_dampers(squares: Real, own: Real, columns: Real) -> BlockRoots:
             raise NotResolved(f"{wanted // 2 - len(_distinct(swinging))} roots coincide or are missing")
         extra_lead, extra_force = _leading(form, extra)
         lead, force = np.concatenate([lead, extra_lead]), np.vstack([force, extra_force])
+    if len(_distinct(swinging, _CLOSE)) < len(swinging) or np.any(np.diff(rates) <= _CLOSE * rates[1:]):
+        raise NotResolved("roots are about to collide")
     _check_sums(form, swinging, rates)
     # The last step moved the roots; the forces follow.
     force = _forces(form, swinging, lead)
@@ -178,18 +182,18 @@ def _real_rates(form: Secular) -> Real:
     return np.repeat(np.sqrt(grid[:-1] * grid[1:]), change)
 
 
-def _distinct(values: Complex) -> Index:
-    """Indices of the first of every group of equal values, lost ones (NaN) left out."""
-    good = np.nonzero(np.isfinite(values) & (values.imag > 1e-7 * np.abs(values)))[0]
+def _distinct(values: Complex, same: float = _SAME) -> Index:
+    """Indices of the first of every group of equal values; lost ones (NaN) and those near the axis are left out."""
+    good = np.nonzero(np.isfinite(values) & (values.imag > max(same, 1e-7) * np.abs(values)))[0]
     order = good[np.argsort(np.abs(values[good]), kind="stable")]
     ranked = values[order]
     size = np.abs(ranked)
     twice = np.zeros(len(order), dtype=bool)
     for shift in range(1, len(order)):
-        near = size[shift:] - size[:-shift] <= _SAME * size[shift:]
+        near = size[shift:] - size[:-shift] <= same * size[shift:]
         if not near.any():
             break
-        twice[shift:] |= near & (np.abs(ranked[shift:] - ranked[:-shift]) <= _SAME * size[shift:])
+        twice[shift:] |= near & (np.abs(ranked[shift:] - ranked[:-shift]) <= same * size[shift:])
     return np.sort(order[~twice])
 
 

@@ -13,12 +13,12 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from mdof.eigen.blocks import rotate_equal, uncoupled_blocks
+from mdof.eigen.blocks import uncoupled_blocks
 from mdof.eigen.choose import Solved, solve_block
 from mdof.eigen.clusters import average_clusters
 from mdof.eigen.oscillators import oscillator_bounds
 from mdof.eigen.refine import refine
-from mdof.eigen.verify import judge, real_times
+from mdof.eigen.verify import judge
 from mdof.errors import UnverifiedError
 
 if TYPE_CHECKING:
@@ -71,7 +71,7 @@ class Roots:
 
 
 def solve_complete(problem: NormalisedProblem, method: str = "auto") -> Roots:
-    """All roots of the normalised problem, judged.
+    """All roots of a normalised problem whose modes of equal frequency are turned, judged.
 
     Raises
     ------
@@ -80,7 +80,6 @@ def solve_complete(problem: NormalisedProblem, method: str = "auto") -> Roots:
     """
     if not problem.recover.shape[1]:
         raise UnverifiedError("the model has no coordinate that can move", "give a body a direction")
-    problem, turn = rotate_equal(problem)
     blocks = uncoupled_blocks(problem)
     size = problem.recover.shape[1]
     solved = [solve_block(problem, block, method) for block in blocks]
@@ -114,8 +113,8 @@ def solve_complete(problem: NormalisedProblem, method: str = "auto") -> Roots:
     return Roots(
         values=roots,
         computed=computed,
-        vectors=z if turn is None else real_times(turn, z),
-        left=left if turn is None or left is None else turn @ left,
+        vectors=z,
+        left=left,
         bounds=bounds,
         backward=judgement.backward,
         block=which,

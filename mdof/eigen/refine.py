@@ -39,7 +39,7 @@ def refine(
         wanted[wanted] &= np.abs(seen.step[wanted]) < 0.05 * _gaps(values, active[wanted])
         moved = old + np.where(wanted, seen.step, 0.0)
         values[active] = np.where(old.imag == 0, moved.real, moved)
-        rough = seen.backward > 0.25 * len(vectors) * _EPS
+        rough = seen.backward > 0.5 * len(vectors) * _EPS
         if turn == _REFINEMENTS - 1:
             break
         for index in active[rough]:

@@ -64,18 +64,9 @@ def kinetic_shares(system: System, shapes: NDArray[np.complex128]) -> NDArray[np
     total = energy.sum(axis=0)
     share = np.divide(energy, total, out=np.zeros_like(energy), where=total > 0)
     result = np.zeros((len(system.coordinate_bodies), shapes.shape[1]))
-    row, column = _own_rows(system)
+    row, column = system.own_coordinates
     result[row] = share[column]
     return result
-
-
-def _own_rows(system: System) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
-    """For every reduced coordinate of a body, the described coordinate that it is."""
-    entries = system.recovery.tocoo()
-    single = np.bincount(entries.row, minlength=entries.shape[0]) == 1
-    exact = single[entries.row] & (entries.data == 1.0)
-    column, first = np.unique(entries.col[exact], return_index=True)
-    return entries.row[exact][first].astype(np.int64), column.astype(np.int64)
 
 
 def _dissipated(modes: DampedModes) -> tuple[list[str], NDArray[np.float64]]:

@@ -17,6 +17,8 @@ __all__ = ["PhysicalResidual"]
 
 _EPS = float(np.finfo(np.float64).eps)
 _POLISHING_STEPS = 2
+#: Coordinates up to which dense products beat sparse ones, and exact 2-norms are cheap.
+_SMALL = 200
 
 
 class PhysicalResidual:
@@ -35,27 +37,58 @@ class PhysicalResidual:
     def __init__(self, system: System, references: NDArray[np.float64] | None) -> None:
         self.system = system
         self.references = references
+        small = system.size <= _SMALL
+        self.springs = _ready(system.spring_columns, small)
+        self.dampers = _ready(system.damper_columns, small)
+        self.mass = _ready(system.mass, small)
+        self.extra_stiffness = _ready(system.extra_stiffness, small)
+        self.velocity = [_ready(part, small) for part in (system.extra_damping, system.gyroscopic) if part is not None]
+        self.loss = system.loss_damping()
         middle = None if references is None else float(np.median(references))
-        self.norms = (_norm(system.M), _norm(system.damping_matrix(middle)), _norm(system.K))
+        self.norms = self._norms(middle)
+
+    def _norms(self, reference: float | None) -> tuple[float, float, float]:
+        system = self.system
+        if system.size > _SMALL:
+            return _longest(system.mass), _longest(system.damping_matrix(reference)), _longest(system.K)
+        mass, damping, stiffness = self._dense(reference)
+        return (float(np.linalg.norm(mass, 2)), float(np.linalg.norm(damping, 2)), float(np.linalg.norm(stiffness, 2)))
+
+    def _dense(self, reference: float | None) -> tuple[NDArray[np.float64], ...]:
+        """M, C and K of a small system as dense arrays, loss factors without a reference matched at ``reference``."""
+        system = self.system
+        if system.size > _SMALL:
+            parts = (system.mass, system.damping_matrix(reference), system.K)
+            return tuple(part.toarray() for part in parts)
+        stiffness = (self.springs * system.stiffness) @ self.springs.T
+        if self.extra_stiffness is not None:
+            stiffness = stiffness + self.extra_stiffness
+        damping = (self.dampers * system.damping) @ self.dampers.T
+        damping = damping + (self.springs * system.loss_damping(reference)) @ self.springs.T
+        damping = damping + system.mass_proportional * self.mass + system.stiffness_proportional * stiffness
+        for part in self.velocity:
+            damping = damping + part
+        return self.mass, damping, stiffness
 
     def _forces(self, vectors: NDArray[np.complex128], index: Any) -> tuple[Any, Any, Any]:
         """M x, C x and K x for every column."""
         system = self.system
-        stretch = system.spring_columns.T @ vectors
-        elastic = system.spring_columns @ (system.stiffness[:, None] * stretch)
-        drag = system.spring_columns @ (system.loss_damping()[:, None] * stretch)
+        stretch = self.springs.T @ vectors
+        elastic = self.springs @ (system.stiffness[:, None] * stretch)
+        drag = self.springs @ (self.loss[:, None] * stretch)
         if self.references is not None:
             floating = np.isnan(system.loss_reference) & (system.loss_factor != 0)
             weight = np.where(floating, system.loss_factor * system.stiffness, 0.0)
-            drag = drag + (system.spring_columns @ (weight[:, None] * stretch)) / self.references[index]
-        drag = drag + system.damper_columns @ (system.damping[:, None] * (system.damper_columns.T @ vectors))
-        inertia = _times(system.mass, vectors)
-        if system.extra_stiffness is not None:
-            elastic = elastic + _times(system.extra_stiffness, vectors)
-        for part in (system.extra_damping, system.gyroscopic):
-            if part is not None:
-                drag = drag + _times(part, vectors)
-        return inertia, drag + system.mass_proportional * inertia + system.stiffness_proportional * elastic, elastic
+            drag = drag + (self.springs @ (weight[:, None] * stretch)) / self.references[index]
+        drag = drag + self.dampers @ (system.damping[:, None] * (self.dampers.T @ vectors))
+        inertia = _times(self.mass, vectors)
+        if self.extra_stiffness is not None:
+            elastic = elastic + _times(self.extra_stiffness, vectors)
+        for part in self.velocity:
+            drag = drag + _times(part, vectors)
+        if system.mass_proportional or system.stiffness_proportional:
+            drag = drag + system.mass_proportional * inertia + system.stiffness_proportional * elastic
+        return inertia, drag, elastic
 
     def backward_errors(
         self, values: NDArray[np.complex128], vectors: NDArray[np.complex128], index: int | None = None
@@ -107,8 +140,8 @@ class PhysicalResidual:
         """One step of inverse iteration with the assembled Q(λ), which also corrects λ (Ruhe, SIAM J. Numer. Anal. 10,
         1973); the pair itself where that breaks down."""
         reference = None if self.references is None else float(self.references[index])
-        mass, damping = self.system.M.toarray(), self.system.damping_matrix(reference).toarray()
-        quadratic = value**2 * mass + value * damping + self.system.K.toarray()
+        mass, damping, stiffness = self._dense(reference)
+        quadratic = value**2 * mass + value * damping + stiffness
         scale = 1.0 / np.sqrt(np.maximum(np.abs(quadratic).max(axis=1), 1e-300))
         try:
             new = scale * np.linalg.solve(
@@ -126,17 +159,19 @@ class PhysicalResidual:
         return complex(moved), new / length
 
 
+def _ready(matrix: Any, small: bool) -> Any:
+    """Dense where that multiplies faster: in small systems, and where a matrix is hardly sparse."""
+    if matrix is None or not (small or matrix.nnz > 0.1 * matrix.shape[0] * matrix.shape[1]):
+        return matrix
+    return matrix.toarray()
+
+
 def _times(matrix: Any, vectors: NDArray[np.complex128]) -> NDArray[np.complex128]:
-    """A real sparse matrix times complex columns; as a dense product where it is hardly sparse."""
-    if matrix.nnz > 0.1 * matrix.shape[0] * matrix.shape[1] and vectors.shape[1] > 1:
-        return real_times(matrix.toarray(), vectors)
-    return np.asarray(matrix @ vectors)
+    return real_times(matrix, vectors) if isinstance(matrix, np.ndarray) else np.asarray(matrix @ vectors)
 
 
-def _norm(matrix: Any) -> float:
-    """2-norm of a small sparse matrix; of a large one its longest column, which is a lower bound."""
-    if matrix.shape[0] <= 200:
-        return float(np.linalg.norm(matrix.toarray(), 2))
+def _longest(matrix: Any) -> float:
+    """Length of the longest column, which the 2-norm is never below."""
     squares = np.zeros(matrix.shape[1])
     np.add.at(squares, np.repeat(np.arange(matrix.shape[1]), np.diff(matrix.indptr)), np.abs(matrix.data) ** 2)
     return float(np.sqrt(squares.max(initial=0.0)))

@@ -109,27 +109,22 @@ def proportionality_findings(
     nearest : ndarray of int, shape (n_modes,); -1 for modes without a ratio
     exact_ratios, exact_frequencies : ndarray, shape (n_modes,) [-, rad/s]
     """
-    easy = plain.ratios()
-    misled: list[int] = []
-    worst, worst_text = 0.0, ""
-    for mode, undamped in enumerate(nearest):
-        ratio, frequency = exact_ratios[mode], exact_frequencies[mode]
-        if undamped < 0 or np.isnan(ratio) or np.isnan(easy[undamped]):
-            continue
-        shift = abs(easy[undamped] - ratio)
-        drift = abs(plain.frequencies[undamped] - frequency) / frequency
-        if (shift > RATIO_SHARE * max(abs(ratio), 1e-300) and shift > RATIO_LEAST) or drift > FREQUENCY_SHARE:
-            misled.append(mode + 1)
-            measure = max(shift / max(abs(ratio), RATIO_LEAST), drift)
-            if measure > worst:
-                worst = measure
-                worst_text = (
-                    f"mode {mode + 1} at {frequency / (2 * np.pi):.4g} Hz has {100 * ratio:.3g} %, "
-                    f"the shortcut says {100 * easy[undamped]:.3g} % "
-                    f"at {plain.frequencies[undamped] / (2 * np.pi):.4g} Hz"
-                )
-    if not misled:
+    told = (nearest >= 0) & ~np.isnan(exact_ratios)
+    easy = np.append(plain.ratios(), np.nan)[nearest]
+    undamped = np.append(plain.frequencies, np.nan)[nearest]
+    size = np.abs(exact_ratios)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        shift, drift = np.abs(easy - exact_ratios), np.abs(undamped / exact_frequencies - 1)
+        wrong = told & (((shift > RATIO_SHARE * size) & (shift > RATIO_LEAST)) | (drift > FREQUENCY_SHARE))
+        measure = np.where(wrong, np.fmax(shift / np.maximum(size, RATIO_LEAST), drift), 0.0)
+    if not wrong.any():
         return []
+    misled = [int(index) + 1 for index in np.nonzero(wrong)[0]]
+    worst = int(np.argmax(measure))
+    worst_text = (
+        f"mode {worst + 1} at {exact_frequencies[worst] / (2 * np.pi):.4g} Hz has {100 * exact_ratios[worst]:.3g} %, "
+        f"the shortcut says {100 * easy[worst]:.3g} % at {undamped[worst] / (2 * np.pi):.4g} Hz"
+    )
     names = _couplers(system, problem, plain, nearest[np.array(misled) - 1])
     message = (
         f"the proportional-damping shortcut misstates {len(misled)} of {len(nearest)} modes; worst: {worst_text}; "
@@ -163,9 +158,7 @@ def _couplers(
     signs = problem.damper_signs
     names += [system.spring_names[index] for index in floating]
     typical = float(np.median(plain.frequencies[plain.frequencies > 0])) if np.any(plain.frequencies > 0) else 1.0
-    rows = np.vstack(
-        [rows, loss / np.sqrt(typical)]
-    )
+    rows = np.vstack([rows, loss / np.sqrt(typical)])
     signs = np.concatenate([signs, np.ones(len(floating))])
     chosen = np.unique(undamped)
     squares = plain.frequencies**2
