@@ -37,7 +37,7 @@ def turned(rows: Any, basis: NDArray[np.float64]) -> NDArray[np.float64]:
 
 def _diagonal(matrix: NDArray[np.float64]) -> NDArray[np.float64] | None:
     """The diagonal of a square matrix that holds nothing else."""
-    if matrix.shape[0] != matrix.shape[1]:
+    if matrix.shape[0] != matrix.shape[1] or (len(matrix) > 1 and matrix[0, 1] != 0):
         return None
     diagonal = np.diagonal(matrix)
     return diagonal.copy() if np.count_nonzero(matrix) == np.count_nonzero(diagonal) else None

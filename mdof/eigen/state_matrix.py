@@ -50,14 +50,17 @@ def energy_balanced(problem: NormalisedProblem, block: NDArray[np.int64]) -> Blo
     # Rates of massless coordinates follow from their own equation: z_l' = −D_ll⁻¹ (D_lh v + W_l Σ S q).
     from_v = -np.linalg.solve(damping[heavy:, heavy:], Dlh)
     from_q = -np.linalg.solve(damping[heavy:, heavy:], force[heavy:] * sign)
-    state = np.block(
-        [
-            [force[heavy:].T @ from_q, force[:heavy].T + force[heavy:].T @ from_v],
-            [-force[:heavy] * sign - Dhl @ from_q, -Dhh - Dhl @ from_v],
-        ]
-    )
+    state = np.zeros((held + heavy, held + heavy))
+    state[:held, held:] = force[:heavy].T
+    state[held:, :held] = -force[:heavy] * sign
+    state[held:, held:] = -Dhh
+    if len(block) > heavy or not problem.modal:
+        state[:held, :held] += force[heavy:].T @ from_q
+        state[:held, held:] += force[heavy:].T @ from_v
+        state[held:, :held] -= Dhl @ from_q
+        state[held:, held:] -= Dhl @ from_v
     moving, still = _split_free(N, damping, heavy, problem.symmetric)
-    keep = np.eye(held + heavy)
+    keep = None
     if still.shape[1]:
         q, _ = np.linalg.qr(still[:heavy], mode="complete")
         rest = q[:, still.shape[1] :]
@@ -71,7 +74,9 @@ def energy_balanced(problem: NormalisedProblem, block: NDArray[np.int64]) -> Blo
     values, states = values.astype(np.complex128), states.astype(np.complex128)
     check_completeness(state, values)
     upper = values.imag >= 0
-    values, states = values[upper], (keep @ states)[:, upper]
+    values, states = values[upper], states[:, upper]
+    if keep is not None:
+        states = keep @ states
     q, v = states[:held], states[held:]
     if problem.modal:
         # The larger of velocity over λ and spring coordinate over ω loses fewer digits.
@@ -84,7 +89,7 @@ def energy_balanced(problem: NormalisedProblem, block: NDArray[np.int64]) -> Blo
         vectors = np.vstack([v, from_q @ q + from_v @ v]) / np.where(values == 0, 1.0, values)
     left = None
     if left_states is not None:
-        w = (keep @ left_states)[held:, upper]
+        w = (left_states if keep is None else keep @ left_states)[held:, upper]
         left = np.vstack([w, _light_left(damping, heavy, w)])
     zero = N.shape[1]
     count = len(state) + zero + still.shape[1]

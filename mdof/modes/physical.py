@@ -17,15 +17,15 @@ __all__ = ["PhysicalResidual"]
 
 _EPS = float(np.finfo(np.float64).eps)
 _POLISHING_STEPS = 2
-#: Coordinates up to which dense products beat sparse ones, and exact 2-norms are cheap.
+#: Coordinates up to which dense products beat sparse ones.
 _SMALL = 200
 
 
 class PhysicalResidual:
     """Backward errors of eigenpairs of a System.
 
-    Tisseur (Linear Algebra Appl. 309, 2000) with 2-norms, which large matrices replace by their longest columns: those
-    are never larger, so the error is never flattered.
+    Tisseur (Linear Algebra Appl. 309, 2000) with the longest columns for the 2-norms of M, C and K: those are never
+    larger, so the error is never flattered.
 
     Parameters
     ----------
@@ -45,21 +45,13 @@ class PhysicalResidual:
         self.velocity = [_ready(part, small) for part in (system.extra_damping, system.gyroscopic) if part is not None]
         self.loss = system.loss_damping()
         middle = None if references is None else float(np.median(references))
-        self.norms = self._norms(middle)
+        self.norms = tuple(_longest(part) for part in self._parts(middle))
 
-    def _norms(self, reference: float | None) -> tuple[float, float, float]:
+    def _parts(self, reference: float | None) -> tuple[Any, Any, Any]:
+        """M, C and K, dense for small systems, loss factors without a reference matched at ``reference``."""
         system = self.system
         if system.size > _SMALL:
-            return _longest(system.mass), _longest(system.damping_matrix(reference)), _longest(system.K)
-        mass, damping, stiffness = self._dense(reference)
-        return (float(np.linalg.norm(mass, 2)), float(np.linalg.norm(damping, 2)), float(np.linalg.norm(stiffness, 2)))
-
-    def _dense(self, reference: float | None) -> tuple[NDArray[np.float64], ...]:
-        """M, C and K of a small system as dense arrays, loss factors without a reference matched at ``reference``."""
-        system = self.system
-        if system.size > _SMALL:
-            parts = (system.mass, system.damping_matrix(reference), system.K)
-            return tuple(part.toarray() for part in parts)
+            return system.mass, system.damping_matrix(reference), system.K
         stiffness = (self.springs * system.stiffness) @ self.springs.T
         if self.extra_stiffness is not None:
             stiffness = stiffness + self.extra_stiffness
@@ -140,7 +132,7 @@ class PhysicalResidual:
         """One step of inverse iteration with the assembled Q(λ), which also corrects λ (Ruhe, SIAM J. Numer. Anal. 10,
         1973); the pair itself where that breaks down."""
         reference = None if self.references is None else float(self.references[index])
-        mass, damping, stiffness = self._dense(reference)
+        mass, damping, stiffness = (_ready(part, small=True) for part in self._parts(reference))
         quadratic = value**2 * mass + value * damping + stiffness
         scale = 1.0 / np.sqrt(np.maximum(np.abs(quadratic).max(axis=1), 1e-300))
         try:
@@ -161,7 +153,11 @@ class PhysicalResidual:
 
 def _ready(matrix: Any, small: bool) -> Any:
     """Dense where that multiplies faster: in small systems, and where a matrix is hardly sparse."""
-    if matrix is None or not (small or matrix.nnz > 0.1 * matrix.shape[0] * matrix.shape[1]):
+    if (
+        matrix is None
+        or isinstance(matrix, np.ndarray)
+        or not (small or matrix.nnz > 0.1 * matrix.shape[0] * matrix.shape[1])
+    ):
         return matrix
     return matrix.toarray()
 
@@ -172,6 +168,8 @@ def _times(matrix: Any, vectors: NDArray[np.complex128]) -> NDArray[np.complex12
 
 def _longest(matrix: Any) -> float:
     """Length of the longest column, which the 2-norm is never below."""
+    if isinstance(matrix, np.ndarray):
+        return float(np.sqrt(np.einsum("ij,ij->j", matrix, matrix).max(initial=0.0)))
     squares = np.zeros(matrix.shape[1])
     np.add.at(squares, np.repeat(np.arange(matrix.shape[1]), np.diff(matrix.indptr)), np.abs(matrix.data) ** 2)
     return float(np.sqrt(squares.max(initial=0.0)))

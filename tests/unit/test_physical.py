@@ -15,7 +15,7 @@ def system(seed: int) -> mdof.System:
     return mdof.System.from_matrices(np.diag([1.0, 1e3, 1e-3, 10.0]), A @ A.T, B @ B.T + np.eye(4))
 
 
-def test_the_backward_error_is_tisseurs_with_two_norms() -> None:
+def test_the_backward_error_is_tisseurs_and_never_below_it() -> None:
     given = system(1)
     M, C, K = given.M.toarray(), given.C.toarray(), given.K.toarray()
     rng = np.random.default_rng(0)
@@ -23,7 +23,8 @@ def test_the_backward_error_is_tisseurs_with_two_norms() -> None:
     size = sum(abs(value) ** power * np.linalg.norm(part, 2) for power, part in ((2, M), (1, C), (0, K)))
     wanted = np.linalg.norm((value**2 * M + value * C + K) @ x) / (size * np.linalg.norm(x))
     found = PhysicalResidual(given, None).backward_errors(np.array([value]), x[:, None])
-    assert found[0] == pytest.approx(wanted, rel=1e-12)
+    # The longest column lies between the 2-norm over sqrt(n) and the 2-norm.
+    assert wanted <= found[0] <= 2 * wanted
 
 
 @pytest.mark.parametrize("seed", range(4))
