@@ -32,6 +32,7 @@ def refine(
     values, vectors = values.copy(), vectors.copy()
     left = None if left is None else left.copy()
     active = np.nonzero(values != 0)[0]
+    last = np.full(len(values), np.inf)
     for turn in range(_REFINEMENTS):
         seen = measure(problem, values[active], vectors[:, active], None if left is None else left[:, active])
         old = values[active]
@@ -46,8 +47,11 @@ def refine(
             vectors[:, index] = _inverse_step(problem, values[index], vectors[:, index], transposed=False)
             if left is not None:
                 left[:, index] = _inverse_step(problem, values[index], left[:, index], transposed=True)
-        # Steps of a few roundings are as good as none.
-        active = active[rough | (wanted & (np.abs(seen.step) > 16 * _EPS * np.abs(old)))]
+        # Steps of a few roundings are as good as none, and steps that no longer shrink are rounding themselves.
+        length = np.abs(seen.step)
+        going = wanted & (length > 16 * _EPS * np.abs(old)) & (length < 0.1 * last[active])
+        last[active] = length
+        active = active[rough | going]
         if not len(active):
             break
     return values, vectors, left
