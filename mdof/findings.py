@@ -74,6 +74,11 @@ REGISTRY: dict[str, FindingKind] = {
         meaning="Damping couples the undamped modes: the one-ratio-a-mode shortcut misstates the modes named.",
         advice="Use the complex modes of this result for the modes named, not undamped-mode damping ratios.",
     ),
+    "partial-spectrum": FindingKind(
+        severity=Severity.NOTE,
+        meaning="Only the modes nearest to a frequency were computed; what concerns all modes was not judged.",
+        advice="Ask for more modes than you need; solve a smaller model whole where the damping shortcut matters.",
+    ),
     "partner-unresolved": FindingKind(
         severity=Severity.WARNING,
         meaning="Real roots could not be paired into oscillators by their shapes; they are listed singly.",

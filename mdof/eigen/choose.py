@@ -18,7 +18,7 @@ if TYPE_CHECKING:
 
 __all__ = ["METHODS", "Solved", "solve_block"]
 
-METHODS = ("auto", "dense", "few dampers")
+METHODS = ("auto", "dense", "few dampers", "partial")
 #: The secular form pays from so many coordinates on, and with at most one damper in so many of them.
 _LEAST_SIZE, _LEAST_SHARE = 60, 12
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
+from collections.abc import Callable
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -21,6 +22,7 @@ from mdof.modes.physical import PhysicalResidual
 from mdof.modes.proportionality import proportionality_findings, shortcut
 from mdof.modes.regime import Numbers, Regime, classify
 from mdof.modes.remarks import mode_findings
+from mdof.modes.shapes import scaled_shapes
 from mdof.system import System
 
 if TYPE_CHECKING:
@@ -31,9 +33,17 @@ __all__ = ["solve"]
 _EPS = float(np.finfo(np.float64).eps)
 #: A relative forward bound above this is no answer.
 _LARGEST_BOUND = 1e-2
+#: Coordinates from which some modes are found without the others.
+_LARGE = 1500
 
 
-def solve(system: System, count: int | None = None, near: float = 0.0, method: str = "auto") -> DampedModes:
+def solve(
+    system: System,
+    count: int | None = None,
+    near: float = 0.0,
+    method: str = "auto",
+    progress: Callable[[int, int], None] | None = None,
+) -> DampedModes:
     """All damped modes of a system, every one verified.
 
     Parameters
@@ -43,8 +53,11 @@ def solve(system: System, count: int | None = None, near: float = 0.0, method: s
         How many modes to return; default all.
     near : float [rad/s]
         With ``count``: return the modes whose natural frequency is nearest to this.
-    method : {"auto", "dense", "few dampers"}
+    method : {"auto", "dense", "few dampers", "partial"}
         ``"auto"`` takes the cheapest kernel that fits, block by block; the others force one where it is defined.
+        ``"partial"`` computes ``count`` modes of a large sparse system and no others.
+    progress : callable, optional
+        Called during a long partial solve with the number of settled roots and of wanted ones.
 
     Returns
     -------
@@ -67,6 +80,12 @@ def solve(system: System, count: int | None = None, near: float = 0.0, method: s
         raise UsageError("near goes with count: say how many modes to return")
     if not np.isfinite(near) or near < 0:
         raise UsageError(f"near must be a frequency in rad/s, not {near!r}")
+    if method == "partial" or (method == "auto" and count is not None and _large(system, count)):
+        from mdof.modes.nearest import solve_nearest
+
+        if count is None:
+            raise UsageError("the method 'partial' needs to know how many modes: give `count`")
+        return solve_nearest(system, int(count), float(near), progress)
     quiet = np.errstate(over="ignore", invalid="ignore", divide="ignore", under="ignore")
     with quiet, suited_threads(system.size):
         try:
@@ -75,6 +94,14 @@ def solve(system: System, count: int | None = None, near: float = 0.0, method: s
             raise UnverifiedError(
                 f"the eigenvalue computation broke down ({error})", "look for values near the ends of the number range"
             ) from None
+
+
+def _large(system: System, count: int) -> bool:
+    """True where some modes are wanted of a system so large and sparse that finding all would be a waste."""
+    from mdof.modes.nearest import obstacle
+
+    few = system.size >= _LARGE and count <= system.size // 20
+    return few and system.K.nnz <= 0.02 * system.size**2 and not obstacle(system)
 
 
 class _Solution:
@@ -118,12 +145,12 @@ class _Solution:
         values = np.array([self._eigenvalues(pair) for pair in pairs])
         reduced, backward = self.reduced, self.backward
         verification = self._verify(numbers)
-        shapes, own = self._shapes(reduced[:, slow])
+        shapes, own = scaled_shapes(self.system, reduced[:, slow])
         fast = np.array([pair[1] if pair[1] != pair[0] else -1 for pair in pairs])
         fast_shapes = np.full_like(shapes, np.nan)
         paired = fast >= 0
         if paired.any():
-            fast_shapes[:, paired] = self._shapes(reduced[:, fast[paired]])[0]
+            fast_shapes[:, paired] = scaled_shapes(self.system, reduced[:, fast[paired]])[0]
         plain = shortcut(self.problem)
         with_ratio = np.array([entry.damping_ratio is not None for entry in numbers])
         nearest = np.where(with_ratio, plain.nearest(pairing.vectors[:, slow], self.problem.heavy), -1)
@@ -222,26 +249,6 @@ class _Solution:
             eigenvalues_expected=expected,
             eigenvalues_found=roots.count,
         )
-
-    def _shapes(self, reduced: NDArray[np.complex128]) -> tuple[NDArray[np.complex128], NDArray[np.complex128]]:
-        """Described shapes and reduced ones, scaled: most energetic coordinate real and positive, largest one 1."""
-        from mdof.modes.energy import kinetic_shares
-
-        described = np.asarray(self.system.recovery @ reduced)
-        share = kinetic_shares(self.system, reduced)
-        magnitude = np.abs(described)
-        still = share.max(axis=0, initial=0.0) <= 0
-        rank = np.where(still, magnitude / np.maximum(magnitude.max(axis=0, initial=0.0), 1e-300), share)
-        # Ties go to the first coordinate in file order.
-        leader = np.argmax(rank >= rank.max(axis=0) * (1 - 1e-9), axis=0)
-        columns = np.arange(described.shape[1])
-        phase = described[leader, columns]
-        phase = np.where(phase == 0, 1.0, phase / np.where(phase == 0, 1.0, np.abs(phase)))
-        largest = magnitude.max(axis=0, initial=0.0)
-        factor = phase.conj() / np.where(largest > 0, largest, 1.0)
-        described, reduced = described * factor, reduced * factor
-        described[leader, columns] = described[leader, columns].real
-        return described, reduced
 
 
 def _array(numbers: list[Numbers], name: str) -> NDArray[np.float64]:

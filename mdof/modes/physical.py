@@ -62,7 +62,7 @@ class PhysicalResidual:
             damping = damping + part
         return self.mass, damping, stiffness
 
-    def _forces(self, vectors: NDArray[np.complex128], index: Any) -> tuple[Any, Any, Any]:
+    def forces(self, vectors: NDArray[np.complex128], index: Any = slice(None)) -> tuple[Any, Any, Any]:
         """M x, C x and K x for every column."""
         system = self.system
         stretch = self.springs.T @ vectors
@@ -86,7 +86,7 @@ class PhysicalResidual:
         self, values: NDArray[np.complex128], vectors: NDArray[np.complex128], index: int | None = None
     ) -> NDArray[np.float64]:
         """Backward error of each pair; ``index`` is the root number where a single pair is given."""
-        inertia, drag, elastic = self._forces(vectors, slice(None) if index is None else [index])
+        inertia, drag, elastic = self.forces(vectors, slice(None) if index is None else [index])
         residual = np.linalg.norm(values**2 * inertia + values * drag + elastic, axis=0)
         size = np.abs(values)
         mass, damping, stiffness = self.norms

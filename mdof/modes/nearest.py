@@ -1,0 +1,259 @@
+"""Some modes of a large model: from the roots nearest to a frequency to DampedModes, every one verified."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from mdof.eigen.blocks import rotate_equal
+from mdof.eigen.partial import Nearest, Pencil, nearest_roots
+from mdof.eigen.quadratic import solve_complete
+from mdof.eigen.reduce import normalise
+from mdof.eigen.verify import GATE
+from mdof.errors import UnverifiedError, UsageError
+from mdof.findings import finding
+from mdof.modes.mode import DampedModes, Verification
+from mdof.modes.physical import PhysicalResidual
+from mdof.modes.regime import Numbers, Regime, classify
+from mdof.modes.shapes import scaled_shapes
+from mdof.system import System
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    Complex = NDArray[np.complex128]
+    Real = NDArray[np.float64]
+
+__all__ = ["LARGEST_BOUND", "obstacle", "solve_nearest"]
+
+_EPS = float(np.finfo(np.float64).eps)
+#: A relative forward bound above this is no answer.
+LARGEST_BOUND = 1e-2
+#: Damper columns up to which they count as few.
+_FEW = 64
+#: Roots computed beyond those asked for, so that pairs are not cut apart.
+_SPARE = 4
+#: Rounding errors of a product with a sparse row, in units of the roundoff.
+_ROW = 32
+
+
+def obstacle(system: System) -> str:
+    """Why a system cannot be solved in part; empty where it can."""
+    if not system.is_symmetric:
+        return "it is not symmetric"
+    if system.has_floating_loss_factors:
+        return "its loss factors state no reference frequency"
+    if np.any(system.stiffness < 0) or np.any(system.damping < 0):
+        return "it has negative stiffness or damping"
+    return ""
+
+
+def solve_nearest(
+    system: System, count: int, near: float, progress: Callable[[int, int], None] | None = None
+) -> DampedModes:
+    """The ``count`` modes whose natural frequency is nearest to ``near`` [rad/s], without the complete spectrum.
+
+    Raises
+    ------
+    UsageError
+        If the system is not of the kind that can be solved in part.
+    UnverifiedError
+        If a mode does not settle or cannot be verified.
+    """
+    why_not = obstacle(system)
+    if why_not:
+        raise UsageError(f"this system cannot be solved in part: {why_not}; solve it whole, without `count`")
+    found = nearest_roots(_pencil(system), min(count + _SPARE, system.size), near, _solve_small, progress)
+    physical = PhysicalResidual(system, None)
+    values, bounds = _refined(system, physical, found)
+    vectors = found.vectors
+    pairs = _pairs(system, values, vectors)
+    sizes = np.array([_frequency(values, pair) for pair in pairs])
+    chosen = np.argsort(np.abs(sizes - near), kind="stable")[:count]
+    chosen = chosen[np.argsort(sizes[chosen], kind="stable")]
+    pairs = [pairs[index] for index in chosen]
+    numbers = [_numbers(values, bounds, pair) for pair in pairs]
+    slow = np.array([pair[0] for pair in pairs])
+    backward = np.maximum(physical.backward_errors(values, vectors), 0.0)
+    verification = _verified(system, backward[slow], numbers, pairs)
+    shapes, reduced = scaled_shapes(system, vectors[:, slow])
+    fast_shapes = np.full_like(shapes, np.nan)
+    for index, (first, second) in enumerate(pairs):
+        if second not in (-1, first):
+            fast_shapes[:, [index]] = scaled_shapes(system, vectors[:, [second]])[0]
+    unknown = np.full(len(pairs), np.nan)
+    return DampedModes(
+        system=system,
+        eigenvalues=_frozen(np.array([_eigenvalues(values, pair) for pair in pairs])),
+        regimes=tuple(entry.regime for entry in numbers),
+        natural_frequencies=_frozen(_column(numbers, "natural_frequency")),
+        damping_ratios=_frozen(_column(numbers, "damping_ratio")),
+        decay_rates=_frozen(_column(numbers, "decay_rate")),
+        shapes=_frozen(shapes),
+        fast_shapes=_frozen(fast_shapes),
+        reduced_shapes=_frozen(reduced),
+        undamped_frequencies=_frozen(unknown.copy()),
+        shortcut_damping_ratios=_frozen(unknown.copy()),
+        backward_errors=_frozen(backward[slow]),
+        damping_ratio_bounds=_frozen(_column(numbers, "damping_ratio_bound")),
+        frequency_bounds=_frozen(_column(numbers, "frequency_bound")),
+        damping_references=_frozen(unknown.copy()),
+        method=found.method,
+        loss_reference="as dashpots matched at their stated frequencies" if np.any(system.loss_factor) else "",
+        findings=_findings(system, near, pairs),
+        verification=verification,
+    )
+
+
+def _pencil(system: System) -> Pencil:
+    mass, damping, stiffness = system.M, system.C, system.K
+    few = (
+        system.damper_columns.shape[1] <= _FEW
+        and not np.any(system.loss_factor)
+        and system.extra_damping is None
+        and not (system.mass_proportional or system.stiffness_proportional)
+    )
+    pushes = np.zeros((system.size, 0))
+    if few:
+        pushes = system.damper_columns.toarray() * np.sqrt(system.damping)
+        pushes = pushes[:, np.any(pushes != 0, axis=0)]
+    forces = PhysicalResidual(system, None).forces
+    return Pencil(mass=mass, damping=damping, stiffness=stiffness, forces=forces, pushes=pushes)
+
+
+def _solve_small(mass: Real, damping: Real, stiffness: Real) -> tuple[Complex, Complex]:
+    problem = rotate_equal(normalise(System.from_matrices(mass, damping, stiffness)))[0]
+    roots = solve_complete(problem)
+    return roots.values, problem.recover @ roots.vectors
+
+
+def _refined(system: System, physical: PhysicalResidual, found: Nearest) -> tuple[Complex, Real]:
+    """Rayleigh step on every root from the factors, and structured forward bounds [1/s]."""
+    values, x = found.values, found.vectors
+    inertia, drag, elastic = physical.forces(x)
+    slope = _dots(x, 2 * values * inertia + drag)
+    step = -_dots(x, values**2 * inertia + values * drag + elastic) / slope
+    values = np.where(values.imag == 0, (values + step).real, values + step)
+    rest = values**2 * inertia + values * drag + elastic
+    size, magnitude = np.abs(values), np.abs(x)
+    effort = size**2 * _dots(magnitude, abs(system.mass) @ magnitude)
+    for columns, weight in (
+        (system.spring_columns, system.stiffness[:, None] * np.ones(len(values))),
+        (system.spring_columns, system.loss_damping()[:, None] * size),
+        (system.damper_columns, system.damping[:, None] * size),
+    ):
+        effort += _dots(weight * np.abs(columns.T @ x), abs(columns.T) @ magnitude)
+    for part, factor in ((system.extra_stiffness, 1.0), (system.extra_damping, size)):
+        if part is not None:
+            effort += factor * _dots(magnitude, abs(part) @ magnitude)
+    effort += size * _dots(magnitude, np.abs(drag))
+    # What the residual does through all other modes: its square over the distance to the next one.
+    mass = np.maximum(system.mass.diagonal(), np.finfo(float).tiny)
+    others = np.concatenate([values, values[values.imag > 0].conj()])
+    distance = np.abs(values[:, None] - others[None, :])
+    distance[np.arange(len(values)), np.arange(len(values))] = np.inf
+    gap = np.minimum(distance.min(axis=1), size)
+    second = np.sum(np.abs(rest) ** 2 / mass[:, None], axis=0) / (gap * size)
+    bounds = (np.abs(_dots(x, rest)) + _ROW * _EPS * effort + second) / np.abs(slope)
+    return values, np.asarray(bounds)
+
+
+def _pairs(system: System, values: Complex, vectors: Complex) -> list[tuple[int, int]]:
+    """(slow, fast) indices; equal for complex pairs, -1 for a real root whose partner is not among the roots found."""
+    pairs = [(int(index), int(index)) for index in np.nonzero(values.imag > 0)[0]]
+    real = np.nonzero(values.imag == 0)[0]
+    if len(real):
+        x = vectors[:, real]
+        slope = _dots(x, 2 * values[real] * (system.mass @ x) + system.C @ x).real
+        slow, fast = list(real[slope > 0]), list(real[slope <= 0])
+        for first in slow:
+            weighted = system.mass @ vectors[:, first]
+            like = [_likeness(system, weighted, vectors[:, first], vectors[:, second]) for second in fast]
+            best = int(np.argmax(like)) if like else -1
+            others = [value for index, value in enumerate(like) if index != best]
+            if like and like[best] >= 0.5 and like[best] >= 2 * max(others, default=0.0):
+                pairs.append((int(first), int(fast.pop(best))))
+            else:
+                pairs.append((int(first), -1))
+        pairs += [(int(second), -1) for second in fast]
+    return pairs
+
+
+def _likeness(system: System, weighted: Complex, first: Complex, second: Complex) -> float:
+    """Mass-weighted modal assurance criterion of two shapes."""
+    own = abs(np.vdot(first, weighted)) * abs(np.vdot(second, system.mass @ second))
+    return float(abs(np.vdot(second, weighted)) ** 2 / own) if own > 0 else 0.0
+
+
+def _frequency(values: Complex, pair: tuple[int, int]) -> float:
+    slow, fast = pair
+    return float(abs(values[slow])) if fast in (-1, slow) else float(np.sqrt(abs(values[slow] * values[fast])))
+
+
+def _eigenvalues(values: Complex, pair: tuple[int, int]) -> tuple[complex, complex]:
+    value = complex(values[pair[0]])
+    if pair[1] < 0:
+        return value, complex(np.nan, np.nan)
+    return value, value.conjugate() if pair[0] == pair[1] else complex(values[pair[1]])
+
+
+def _numbers(values: Complex, bounds: Real, pair: tuple[int, int]) -> Numbers:
+    first, second = _eigenvalues(values, pair)
+    single = pair[1] < 0
+    last = pair[0] if single else pair[1]
+    return classify(
+        first, None if single else second, (float(bounds[pair[0]]), float(bounds[last])), relaxation=False, passive=True
+    )
+
+
+def _verified(system: System, backward: Real, numbers: list[Numbers], pairs: list[tuple[int, int]]) -> Verification:
+    gate = float(backward.max(initial=0.0)) / (system.size * _EPS)
+    largest = float(np.nanmax(_column(numbers, "frequency_bound"), initial=0.0))
+    if not gate < GATE or not largest <= LARGEST_BOUND:
+        raise UnverifiedError(
+            f"modes of this part are only known to {100 * largest:.2g} %, with a residual of {gate:.3g} times n times "
+            "the unit roundoff",
+            "ask for a few more modes, or for those near another frequency",
+        )
+    if any(entry.regime in (Regime.UNSTABLE, Regime.DIVERGENT) for entry in numbers):
+        raise UnverifiedError(
+            "a mode grows although nothing in the model can feed it", "ask for the modes near another frequency"
+        )
+    count = sum(1 if second < 0 else 2 for _, second in pairs)
+    return Verification(
+        status="verified",
+        largest_scaled_residual=gate,
+        largest_frequency_bound=largest,
+        eigenvalues_expected=count,
+        eigenvalues_found=count,
+    )
+
+
+def _findings(system: System, near: float, pairs: list[tuple[int, int]]) -> tuple[Any, ...]:
+    text = (
+        f"{len(pairs)} modes nearest to {near / (2 * np.pi):.4g} Hz, of {system.degrees_of_freedom} degrees of "
+        "freedom; that none is missing between them is not proven, and the damping shortcut was not judged"
+    )
+    found = [finding("partial-spectrum", text)]
+    single = tuple(index + 1 for index, pair in enumerate(pairs) if pair[1] < 0)
+    if single:
+        found.append(
+            finding("partner-unresolved", "real roots whose partner is not among the roots computed", modes=single)
+        )
+    return tuple(found)
+
+
+def _dots(first: Any, second: Any) -> Any:
+    return np.einsum("ij,ij->j", first, second)
+
+
+def _column(numbers: list[Numbers], name: str) -> Real:
+    values = (getattr(entry, name) for entry in numbers)
+    return np.array([np.nan if value is None else value for value in values], dtype=np.float64)
+
+
+def _frozen(values: Any) -> Any:
+    values.flags.writeable = False
+    return values
