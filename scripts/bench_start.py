@@ -84,7 +84,7 @@ def main() -> int:
     """Measure, print and judge."""
     parser = argparse.ArgumentParser(description=__doc__.splitlines()[0] if __doc__ else None)
     parser.add_argument("--repeat", type=int, default=11, help="turns; medians are shown (default 11)")
-    turns = parser.parse_args().repeat
+    turns = max(1, parser.parse_args().repeat)
     bare: list[tuple[float, float]] = []
     skid: list[tuple[float, float]] = []
     helped: list[tuple[float, float]] = []
@@ -103,7 +103,10 @@ def main() -> int:
         built.append(graph)
         assembled.append(system)
     seconds, peaks = zip(*bare, strict=True)
-    print(f"{turns} turns, medians of processes started one after the other; ± is the median deviation of the ratio")
+    print(
+        f"{turns} turns ({len(built)} of assembling), medians of processes started one after the other; "
+        "± is the median deviation of the ratio"
+    )
     met = [
         show("mdof modes SKID --archive / imports", [s for s, _ in skid], list(seconds), "s", 2.0, 1.5),
         show("mdof --help / imports", [s for s, _ in helped], list(seconds), "s", 0.5),

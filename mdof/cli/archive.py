@@ -24,6 +24,7 @@ def list_command(session: Session, folder: str, form: str) -> None:
 
     Files that are damaged or no runs are named on standard error, and the status is 4.
     """
+    session.load("mdof.archive.store")
     from mdof.archive.store import list_runs
 
     listing = list_runs(folder)
@@ -47,6 +48,7 @@ def list_command(session: Session, folder: str, form: str) -> None:
 @click.pass_obj
 def show_command(session: Session, run: str, form: str, source: bool) -> None:
     """Show the modes, findings and origin of RUN, after verifying its digest; nothing is computed anew."""
+    session.load("mdof.archive.store")
     from mdof.archive.store import read_run
     from mdof.errors import UsageError
 

@@ -36,6 +36,7 @@ def check(ctx: click.Context, models: tuple[str, ...], schema: bool, state: str 
         return
     if not models:
         raise click.UsageError("Missing argument 'MODEL...'.", ctx)
+    session.load("mdof.description.reading", "mdof.report.checking", "mdof.report.summaries")
     shown = 0
 
     def work(model: Model) -> None:

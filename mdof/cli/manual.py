@@ -31,7 +31,9 @@ def manual(ctx: click.Context, topic: str | None) -> None:
         return
     if topic not in pages:
         raise click.UsageError(f"there is no page about {topic!r}{nearest(topic, list(pages))}", ctx)
-    session.data(pages[topic].read_text(encoding="utf-8"))
+    from mdof.report.prose import page_text
+
+    session.data(page_text(pages[topic].read_text(encoding="utf-8"), session.look()))
 
 
 def _title(path: Path) -> str:

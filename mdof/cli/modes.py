@@ -38,6 +38,11 @@ def modes(
         from mdof.report.figures import check_figure
 
         check_figure(figure, several=len(models) > 1 or state == "all")
+    session.load("mdof.description.reading", "mdof.modes.analysis", "mdof.report.checking", "mdof.report.tables")
+    if archive is not None:
+        session.load("mdof.archive.run")
+    if figure is not None:
+        session.load("mdof.report.pages")
     drawn: list[tuple[Model, DampedModes]] = []
     shown = 0
 

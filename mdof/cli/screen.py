@@ -49,6 +49,8 @@ def screen(
         if stated_below <= 0:
             raise click.BadParameter(f"{below} is not above zero", param_hint="'--below'")
 
+    session.load("mdof.description.reading", "mdof.modes.analysis", "mdof.report.checking", "mdof.report.summaries")
+
     def work(model: Model) -> None:
         from mdof.report.checking import solve_model
         from mdof.report.screening import screen as judge

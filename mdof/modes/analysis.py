@@ -221,17 +221,18 @@ class _Solution:
         roots, problem = self.roots, self.problem
         size = problem.recover.shape[1]
         gate = float(self.backward.max(initial=0.0)) / (size * _EPS)
-        if not gate < GATE:
-            raise UnverifiedError(
-                f"an eigenpair leaves a residual {gate:.3g} times n times the unit roundoff; {GATE:g} is the limit",
-                "look for stiffness, mass or damping values that differ by more than 12 orders of magnitude",
-            )
+        # What the given numbers do not determine is said first; such pairs leave large residuals too.
         bounds = _array(numbers, "frequency_bound")
         largest = float(np.nanmax(bounds)) if np.any(np.isfinite(bounds)) else 0.0
         if np.any(np.isinf(bounds)) or largest > _LARGEST_BOUND:
             raise UnverifiedError(
                 f"rounding of the given numbers alone may move an eigenvalue by {100 * largest:.2g} %",
                 "look for a near-mechanism, cancelling stiffness or values over 12 orders of magnitude",
+            )
+        if not gate < GATE:
+            raise UnverifiedError(
+                f"an eigenpair leaves a residual {gate:.3g} times n times the unit roundoff; {GATE:g} is the limit",
+                "look for stiffness, mass or damping values that differ by more than 12 orders of magnitude",
             )
         expected = size + problem.heavy
         if roots.count != expected:

@@ -4,35 +4,18 @@ from __future__ import annotations
 
 import math
 import os
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
-from io import StringIO
-from typing import Any, TextIO
+from typing import TYPE_CHECKING, TextIO
 
-from rich.cells import cell_len
-from rich.console import Console, RenderableType
-from rich.table import Table
-from rich.text import Text
+if TYPE_CHECKING:
+    from mdof.report.layout import Grid, Paragraph
 
-__all__ = [
-    "DASH",
-    "Look",
-    "aligned",
-    "columns",
-    "fold",
-    "frequency",
-    "grid",
-    "number",
-    "pad",
-    "percent",
-    "plural",
-    "styled",
-]
+__all__ = ["DASH", "Look", "aligned", "frequency", "number", "percent", "plural"]
 
 #: What an undefined number is shown as.
 DASH = "–"
 _NARROWEST = 30
-_UNLIMITED = 100_000
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
@@ -68,28 +51,9 @@ class Look:
         colour = not variables.get("NO_COLOR") and ((terminal and capable) or forced)
         return cls(width=None if width is None else max(width, _NARROWEST), colour=colour)
 
-    def render(self, *parts: RenderableType) -> str:
-        """Parts one below the other as text for this place, without blanks at line ends."""
-        stream = StringIO()
-        console = Console(
-            file=stream,
-            width=self.width or _UNLIMITED,
-            color_system="standard" if self.colour else None,
-            force_terminal=self.colour,
-            legacy_windows=False,
-            markup=False,
-            emoji=False,
-            highlight=False,
-            soft_wrap=False,
-        )
-        for part in parts:
-            console.print(part)
-        return "".join(f"{line.rstrip()}\n" for line in stream.getvalue().split("\n")[:-1])
-
-
-def grid(gap: int = 2) -> Table:
-    """A table without lines or colours; columns are set apart by blanks."""
-    return Table(box=None, show_header=False, pad_edge=False, padding=(0, gap, 0, 0), collapse_padding=True)
+    def render(self, *parts: Paragraph | Grid) -> str:
+        """Parts one below the other as text for this place."""
+        return "".join(f"{line}\n" for part in parts for line in part.lines(self.width, self.colour))
 
 
 def number(value: float | None, digits: int = 4, decimals: int = 99) -> str:
@@ -141,32 +105,3 @@ def aligned(values: Iterable[float | None], digits: int = 4, decimals: int = 99)
 def plural(count: int, word: str, words: str | None = None) -> str:
     """``1 body``, ``3 bodies``."""
     return f"{count:,} {word if count == 1 else words or word + 's'}".replace(",", " ")
-
-
-def styled(text: str, style: str = "") -> Text:
-    """A text that is never read as markup, because names may hold brackets."""
-    return Text(text, style=style, overflow="fold")
-
-
-def columns(table: Table, cells: Sequence[Any]) -> None:
-    """Add one row of texts and rich cells."""
-    table.add_row(*[cell if isinstance(cell, Text) else styled(cell) for cell in cells])
-
-
-def pad(text: str, width: int) -> str:
-    """``text`` filled with blanks to so many terminal columns; wide letters count two."""
-    return text + " " * (width - cell_len(text))
-
-
-def fold(text: str, width: int) -> list[str]:
-    """``text`` in lines of at most so many terminal columns, broken after a blank or one of ``_ / -`` if possible."""
-    lines = []
-    while cell_len(text) > width:
-        end = 1
-        while end < len(text) and cell_len(text[: end + 1]) <= width:
-            end += 1
-        good = [index for index in range(1, end + 1) if text[index - 1] in " _/-" or text[index : index + 1] == " "]
-        end = good[-1] if good else end
-        lines.append(text[:end].rstrip())
-        text = text[end:].lstrip(" ")
-    return [*lines, text]

@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING, Any
 
-from mdof.report.look import DASH, Look, aligned, columns, frequency, grid, percent, plural, styled
+from mdof.report.layout import Grid, Paragraph, styled
+from mdof.report.look import DASH, Look, aligned, frequency, percent, plural
 
 if TYPE_CHECKING:
     from mdof.report.checking import CheckedModel
@@ -14,40 +16,53 @@ if TYPE_CHECKING:
 __all__ = ["check_text", "run_facts", "run_list", "screening_line"]
 
 
-#: Below this width a list of runs takes several lines a run.
-_ROOMY = 150
-
-
 def check_text(checked: CheckedModel, look: Look) -> str:
     """Bodies with mass and centre, totals, connections by kind, free directions."""
     totals = checked.summary
-    flat = all(at == (0.0, 0.0, 0.0) for _, at in checked.bodies.values())
-    names = [*checked.bodies, f"all {len(checked.bodies)}"]
-    # A torsional train has no masses but inertias.
-    turning = totals.total_mass == 0 and any(checked.inertias.values())
-    amounts = (
-        [*checked.inertias.values(), None]
-        if turning
-        else [*(mass for mass, _ in checked.bodies.values()), totals.total_mass]
-    )
-    masses, unit = aligned(amounts, 5, 3), "inertia kg m²" if turning else "mass kg"
-    centres = [*(at for _, at in checked.bodies.values()), totals.centre_of_gravity]
-    table = grid()
-    heads = ["body", unit] + ([] if flat else [f"{f'centre {axis} m':>10}" for axis in "xyz"])
-    columns(table, [styled(head, "bold") for head in heads])
-    for name, mass, at in zip(names, masses, centres, strict=True):
-        cells = [name, f"{mass:>{len(unit)}}"]
-        if not flat:
-            cells += [f"{DASH:>10}"] * 3 if at is None else [f"{value:>z10.3f}" for value in at]
-        columns(table, [styled(cell, "bold" if name is names[-1] else "") for cell in cells])
-    facts = grid()
+    facts = Grid()
     kinds = ", ".join(f"{count} × {kind}" for kind, count in totals.connections.items()) or "none"
-    columns(facts, [styled("connections", "dim"), f"{sum(totals.connections.values())}: {kinds}"])
+    facts.add(styled("connections", "dim"), f"{sum(totals.connections.values())}: {kinds}")
     if len(totals.grounds) > 1:
-        columns(facts, [styled("grounds", "dim"), ", ".join(totals.grounds)])
-    free = "; ".join(totals.free_directions) or "none; every body is tied to something in each of its directions"
-    columns(facts, [styled("free", "dim"), free])
-    return look.render(table, "", facts)
+        facts.add(styled("grounds", "dim"), ", ".join(totals.grounds))
+    free = "; ".join(totals.free_directions)
+    if not free:
+        together = any(item.code == "unheld-body" for item in checked.findings)
+        free = "none; every body is tied to something in each of its directions"
+        free = "no body by itself, but bodies together, as told below" if together else free
+    facts.add(styled("free", "dim"), free)
+    return look.render(*_bodies(checked, look), styled(""), facts)
+
+
+def _bodies(checked: CheckedModel, look: Look) -> list[Grid | Paragraph]:
+    """A table of the bodies; in a narrow terminal two lines a body."""
+    totals = checked.summary
+    names = list(checked.bodies)
+    centres = [at for _, at in checked.bodies.values()]
+    flat = all(at == (0.0, 0.0, 0.0) for at in centres)
+    # A torsional train has no masses but inertias, which its gears keep from being added up.
+    turning = totals.total_mass == 0 and any(checked.inertias.values())
+    amounts = list(checked.inertias.values()) if turning else [mass for mass, _ in checked.bodies.values()]
+    unit = "kg m²" if turning else "kg"
+    if not turning:
+        names.append(f"all {len(names)}")
+        amounts.append(totals.total_mass)
+        centres.append(totals.centre_of_gravity or (math.nan,) * 3)
+    shown = aligned(amounts, 5, 3)
+    head = f"{'inertia' if turning else 'mass'} {unit}"
+    table = Grid()
+    axes = "" if flat else "xyz"
+    table.add(*[styled(text, "bold") for text in ("body", head, *(f"{f'centre {axis} m':>10}" for axis in axes))])
+    for name, amount, at in zip(names, shown, centres, strict=True):
+        places = [f"{DASH if math.isnan(value) else f'{value:z.3f}':>10}" for value in at]
+        style = "bold" if name is names[-1] and not turning else ""
+        table.add(*[styled(text, style) for text in (name, f"{amount:>{len(head)}}", *(() if flat else places))])
+    if look.width is None or table.width <= look.width:
+        return [table]
+    lines: list[Grid | Paragraph] = []
+    for name, amount, at in zip(names, shown, centres, strict=True):
+        place = "" if flat or math.isnan(at[0]) else f" at {', '.join(f'{value:z.3f}' for value in at)} m"
+        lines += [styled(name, "bold"), styled(f"{amount.strip()} {unit}{place}", "", 4)]
+    return lines
 
 
 def screening_line(name: str, state: str | None, result: Screening, look: Look) -> str:
@@ -68,32 +83,20 @@ def screening_line(name: str, state: str | None, result: Screening, look: Look) 
 
 
 def _verdict(word: Any, text: str, look: Look) -> str:
-    table = grid()
-    columns(table, [word, text])
+    table = Grid()
+    table.add(word, text)
     return look.render(table)
 
 
 def run_list(headers: Sequence[Any], look: Look) -> str:
-    """A folder of runs, oldest first."""
+    """A folder of runs, oldest first; several lines a run where a table has no room."""
     if not headers:
         return look.render(styled("no runs"))
-    if look.width is not None and look.width < _ROOMY:
-        parts: list[Any] = []
-        for run in headers:
-            state = f" [{run.state}]" if run.state else ""
-            facts = f"{plural(run.number_of_modes, 'mode')}, least ratio {percent(run.least_damping_ratio)}, "
-            facts += plural(run.number_of_findings, "finding")
-            parts += [
-                styled(f"{_moment(run)}  {run.title}{state}", "bold"),
-                styled(f"    {facts}"),
-                styled(f"    {run.path.name}"),
-            ]
-        return look.render(*parts)
-    table = grid()
+    table = Grid()
     heads = ["written (UTC)", "model", "state", "modes", "least ratio", "findings", "file"]
-    columns(table, [styled(head, "bold") for head in heads])
+    table.add(*[styled(head, "bold") for head in heads])
     for run in headers:
-        cells = [
+        table.add(
             _moment(run),
             run.title,
             run.state or "as written",
@@ -101,9 +104,20 @@ def run_list(headers: Sequence[Any], look: Look) -> str:
             f"{percent(run.least_damping_ratio):>11}",
             f"{run.number_of_findings:>8}",
             run.path.name,
+        )
+    if look.width is None or table.width <= look.width:
+        return look.render(table)
+    lines: list[Paragraph] = []
+    for run in headers:
+        state = f" [{run.state}]" if run.state else ""
+        facts = f"{plural(run.number_of_modes, 'mode')}, least ratio {percent(run.least_damping_ratio)}, "
+        facts += plural(run.number_of_findings, "finding")
+        lines += [
+            styled(f"{_moment(run)}  {run.title}{state}", "bold"),
+            styled(facts, "", 4),
+            styled(run.path.name, "", 4),
         ]
-        columns(table, cells)
-    return look.render(table)
+    return look.render(*lines)
 
 
 def _moment(run: Any) -> str:
@@ -112,7 +126,7 @@ def _moment(run: Any) -> str:
 
 def run_facts(header: Any, versions: Mapping[str, str], look: Look) -> str:
     """Where a run came from and what computed it."""
-    table = grid()
+    table = Grid()
     order = sorted(versions, key=lambda name: (name not in ("mdof", "python", "platform"), name))
     for name, value in (
         ("run", header.path.name),
@@ -123,5 +137,5 @@ def run_facts(header: Any, versions: Mapping[str, str], look: Look) -> str:
         ("file digest", f"sha256:{header.file_digest} (verified)"),
         ("computed by", ", ".join(f"{name} {versions[name]}" for name in order)),
     ):
-        columns(table, [styled(name, "dim"), value])
+        table.add(styled(name, "dim"), value)
     return look.render(table)

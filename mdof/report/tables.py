@@ -8,11 +8,10 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any, Protocol
 
 from rich.cells import cell_len
-from rich.padding import Padding
-from rich.text import Text
 
 from mdof.findings import Severity
-from mdof.report.look import DASH, Look, aligned, columns, fold, grid, number, pad, percent, plural, styled
+from mdof.report.layout import Grid, Paragraph, fold, pad, styled
+from mdof.report.look import DASH, Look, aligned, number, percent, plural
 
 if TYPE_CHECKING:
     from collections.abc import Iterable
@@ -117,12 +116,12 @@ def provenance(method: str, loss_reference: str, verification: dict[str, Any], l
     """How the numbers came about: method, loss-factor reference, verification."""
     found, expected = verification["eigenvalues_found"], verification["eigenvalues_expected"]
     residual = number(verification["largest_scaled_residual"], 2)
-    table = grid()
-    columns(table, [styled("solved by", "dim"), method])
+    table = Grid()
+    table.add(styled("solved by", "dim"), method)
     if loss_reference:
-        columns(table, [styled("loss factors", "dim"), loss_reference])
+        table.add(styled("loss factors", "dim"), loss_reference)
     text = f"{found} of {expected} eigenvalues, largest scaled residual {residual} (passes below 10)"
-    columns(table, [styled(str(verification["status"]), "dim"), text])
+    table.add(styled(str(verification["status"]), "dim"), text)
     return look.render(table)
 
 
@@ -165,15 +164,32 @@ def mode_table(modes: Iterable[ModeLike], bodies: Sequence[str], directions: Seq
             _Column("undamped", "Hz", aligned(undamped)),
         ]
     table += [
-        _Column("", "regime", [str(mode.regime) for mode in rows], left=True, least=11),
+        _Column("", "regime", [_regime(mode) for mode in rows], left=True, least=11),
         _Column("2 % in", "s", aligned([mode.time_to_two_percent for mode in rows], 3)),
-        _Column("moves", "most", [_share(mover) for mover in movers]),
-        _Column("", "", [mover.name for mover in movers], left=True, least=8),
-        _Column("damps", "most", [_share(taker) for taker in takers]),
-        _Column("", "", [taker.name if taker else DASH for taker in takers], left=True, least=8),
     ]
     styles = [_STYLES.get(str(mode.regime), "") for mode in rows]
-    return _laid_out(table, styles, 2 if middle else 1, look) or _records(rows, movers, takers, look)
+    gap = 2 if middle else 1
+    # Where room is short the shares go before names are folded.
+    for shares in ((True, True), (False, True), (False, False)):
+        whole = table + _leaders("moves", movers, shares[0]) + _leaders("damps", takers, shares[1])
+        if look.width is None or sum(column.width + gap for column in whole) - gap <= look.width:
+            break
+    return _laid_out(whole, styles, gap, look) or _records(rows, movers, takers, look)
+
+
+def _regime(mode: ModeLike) -> str:
+    """The regime, with the rate of decay or growth where that is all there is to tell."""
+    if mode.natural_frequency is not None or mode.decay_rate == 0:
+        return str(mode.regime)
+    return f"{mode.regime} {number(abs(mode.decay_rate), 3)} 1/s"
+
+
+def _leaders(heading: str, leaders: Sequence[Mover | None], shares: bool) -> list[_Column]:
+    names = [DASH if leader is None else leader.name for leader in leaders]
+    if not shares:
+        return [_Column(heading, "most", names, left=True, least=8)]
+    parts = ["" if leader is None or leader.share is None else f"{100 * leader.share:.0f} %" for leader in leaders]
+    return [_Column(heading, "most", parts), _Column("", "", names, left=True, least=8)]
 
 
 @dataclass
@@ -207,7 +223,7 @@ def _laid_out(table: list[_Column], styles: list[str], gap: int, look: Look) -> 
             return ""
         max(givers, key=lambda column: column.width).width -= 1
         spare += 1
-    text = Text(no_wrap=True, overflow="ignore")
+    lines: list[Paragraph] = []
     blank = " " * gap
     heads = [[column.name for column in table], [column.unit for column in table]]
     rows = [(cells, "bold") for cells in heads[:1]] + [(cells, "dim") for cells in heads[1:]]
@@ -219,16 +235,12 @@ def _laid_out(table: list[_Column], styles: list[str], gap: int, look: Look) -> 
                 part[line] if line < len(part) else " " * column.width
                 for column, part in zip(table, folded, strict=True)
             ]
-            text.append(f"\n{blank.join(parts).rstrip()}" if text else blank.join(parts).rstrip(), style)
-    return look.render(text)
+            lines.append(Paragraph(wrap=False).append(blank.join(parts).rstrip(), style))
+    return look.render(*lines)
 
 
 def _scaled(values: Iterable[float | None], factor: float) -> list[float | None]:
     return [None if value is None else value * factor for value in values]
-
-
-def _share(leader: Mover | None) -> str:
-    return "" if leader is None or leader.share is None else f"{100 * leader.share:.0f} %"
 
 
 def _gauge(ratio: float | None) -> str:
@@ -241,19 +253,22 @@ def _gauge(ratio: float | None) -> str:
 
 def _records(rows: Sequence[ModeLike], movers: Sequence[Mover], takers: Sequence[Mover | None], look: Look) -> str:
     """Three short lines a mode, for narrow terminals."""
-    lines: list[Any] = []
+    lines: list[Paragraph] = []
     room = len(str(rows[-1].number))
     for mode, mover, taker in zip(rows, movers, takers, strict=True):
-        natural = DASH if mode.natural_frequency is None else number(mode.natural_frequency / (2 * math.pi))
-        damped = DASH if mode.damped_frequency is None else number(mode.damped_frequency / (2 * math.pi))
-        settled = DASH if mode.time_to_two_percent is None else f"{number(mode.time_to_two_percent, 3)} s"
-        first = Text(f"{mode.number:>{room}}  ", style="bold", overflow="fold")
-        first.append(f"{natural} Hz", "bold").append(
-            f" (damped {damped} Hz), ratio {percent(mode.damping_ratio)}", "not bold"
-        )
-        second = styled(f"{mode.regime}, falls to 2 % in {settled}", _STYLES.get(str(mode.regime), ""))
-        third = styled(f"moves {mover}; damps {taker or DASH}", "dim")
-        lines += [first, Padding(second, (0, 0, 0, room + 2)), Padding(third, (0, 0, 0, room + 2))]
+        style = _STYLES.get(str(mode.regime), "")
+        first = styled(f"{mode.number:>{room}}  ", "bold")
+        lines.append(first)
+        if mode.natural_frequency is None:
+            first.append(_regime(mode), style)
+        else:
+            damped = DASH if mode.damped_frequency is None else number(mode.damped_frequency / (2 * math.pi))
+            time = mode.time_to_two_percent
+            settled = "" if time is None else f", falls to 2 % in {number(time, 3)} s"
+            first.append(f"{number(mode.natural_frequency / (2 * math.pi))} Hz", "bold")
+            first.append(f" (damped {damped} Hz), ratio {percent(mode.damping_ratio)}")
+            lines.append(styled(f"{mode.regime}{settled}", style, room + 2))
+        lines.append(styled(f"moves {mover}; damps {taker or DASH}", "dim", room + 2))
     return look.render(*lines)
 
 
@@ -262,13 +277,12 @@ def findings_block(findings: Iterable[Finding], look: Look) -> str:
     ordered = sorted(findings, key=lambda item: _ORDER[item.severity])
     if not ordered:
         return ""
-    parts: list[Any] = []
+    parts: list[Paragraph] = []
     for item in ordered:
-        head = Text(f"{item.severity}", style=_SEVERITY[item.severity], overflow="fold")
-        head.append(f"  {item.code}", "bold")
+        head = styled(f"{item.severity}", _SEVERITY[item.severity]).append(f"  {item.code}", "bold")
         if item.modes:
-            head.append(f"  {_numbers(item.modes)}", "not bold dim")
-        parts += [head, Padding(styled(item.message), (0, 0, 0, 4)), Padding(styled(f"→ {item.advice}"), (0, 0, 0, 4))]
+            head.append(f"  {_numbers(item.modes)}", "dim")
+        parts += [head, styled(item.message, "", 4), styled(f"→ {item.advice}", "", 4)]
     return look.render(*parts)
 
 

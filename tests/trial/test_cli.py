@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import csv
+import gc
 import io
 import json
 import os
@@ -17,6 +18,7 @@ import jsonschema
 import pytest
 
 import mdof
+from mdof.cli.session import Session
 
 ROOT = Path(__file__).parents[2]
 MODELS = ROOT / "models"
@@ -326,6 +328,20 @@ def test_the_main_job_loads_no_more_than_it_needs(tmp_path: Path) -> None:
     )
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, timeout=60, check=False)
     assert done.returncode == 0, done.stderr[-300:]
+
+
+def test_loading_leaves_the_collector_as_it_was(monkeypatch: pytest.MonkeyPatch) -> None:
+    states: list[bool] = []
+    monkeypatch.setattr("mdof.cli.session.import_module", lambda _: states.append(gc.isenabled()))
+    assert gc.isenabled()
+    Session(["mdof"]).load("one", "two")
+    assert (states, gc.isenabled()) == ([False, False], True)
+    gc.disable()
+    try:
+        Session(["mdof"]).load("one")
+        assert not gc.isenabled()
+    finally:
+        gc.enable()
 
 
 def test_archiving_is_quick(tmp_path: Path) -> None:

@@ -13,6 +13,7 @@ import pytest
 import mdof
 from mdof.cli import main
 from mdof.cli.app import COMMANDS
+from mdof.findings import REGISTRY
 from mdof.modes.regime import Regime
 
 PAGES = sorted((Path(mdof.__file__).parent / "manual").glob("*.md"))
@@ -84,7 +85,8 @@ def test_the_list_names_every_page(capfd: pytest.CaptureFixture[str]) -> None:
 
 
 def test_pages_named_in_texts_exist() -> None:
-    named = set(re.findall(r"mdof manual ([a-z-]+)", ALL))
+    readme = (Path(__file__).parents[2] / "README.md").read_text(encoding="utf-8")
+    named = set(re.findall(r"mdof manual\s+([a-z-]+)", ALL + readme)) - {"lists"}
     assert named
     assert named <= {page.stem for page in PAGES}
 
@@ -92,6 +94,19 @@ def test_pages_named_in_texts_exist() -> None:
 def test_every_regime_is_explained() -> None:
     page = (Path(mdof.__file__).parent / "manual" / "modes.md").read_text(encoding="utf-8")
     assert all(f"**{regime}**" in page for regime in Regime)
+
+
+def test_every_finding_is_explained_in_the_words_of_the_registry() -> None:
+    page = (Path(mdof.__file__).parent / "manual" / "findings.md").read_text(encoding="utf-8")
+    told = {
+        code: " ".join(text.split())
+        for code, text in re.findall(r"^- `([a-z-]+)`: ((?:.+\n)(?:  .+\n)*)", page, flags=re.MULTILINE)
+    }
+    assert told == {code: f"{kind.meaning} {kind.advice}" for code, kind in REGISTRY.items()}
+    places = [page.index(f"## {heading}") for heading in ("Serious", "Warnings", "Notes")]
+    for code, kind in REGISTRY.items():
+        at = sum(page.index(f"`{code}`:") > place for place in places) - 1
+        assert ("serious", "warning", "note")[at] == kind.severity, code
 
 
 def test_the_example_object_has_the_keys_of_the_schema() -> None:

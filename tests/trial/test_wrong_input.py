@@ -10,6 +10,8 @@ from pathlib import Path
 
 import pytest
 
+from mdof.cli import main
+
 GOOD = """\
 title: Fan
 bodies:
@@ -32,9 +34,31 @@ def modes(folder: Path, *words: str, status: int = 2) -> str:
     return said
 
 
-def changed(old: str, new: str) -> str:
-    assert old in GOOD
-    return GOOD.replace(old, new)
+def changed(old: str, new: str, text: str = GOOD) -> str:
+    assert old in text
+    return text.replace(old, new)
+
+
+#: A body with six directions on a foot off its centre, and a state.
+SPATIAL = """\
+directions: [x, y, z, rx, ry, rz]
+bodies:
+  fan: {mass: 100 kg, centre: [0 m, 0 m, 1 m], inertia: [4 kg*m^2, 5 kg*m^2, 6 kg*m^2]}
+connections:
+  mount: {between: [fan, ground], at: [0 m, 0 m, 0 m], stiffness: {x: 1 kN/mm, z: 2 kN/mm}}
+states:
+  full: {bodies: {fan: {mass: 140 kg}}}
+"""
+
+
+def spatial(old: str, new: str) -> str:
+    return changed(old, new, SPATIAL)
+
+
+@pytest.mark.parametrize("text", [GOOD, SPATIAL])
+def test_the_models_that_faults_are_put_into_are_good(tmp_path: Path, text: str) -> None:
+    (tmp_path / "fan.yaml").write_text(text)
+    modes(tmp_path, "fan.yaml", status=0)
 
 
 @pytest.mark.parametrize(
@@ -47,6 +71,22 @@ def changed(old: str, new: str) -> str:
         (changed("1 kN/mm", ".inf"), "5:46: connections.mount.stiffness:", "finite"),
         (changed("1 kN/mm", "010"), "5:46: connections.mount.stiffness:", "octal"),
         (changed("1 kN/mm", "1:30"), "5:46: connections.mount.stiffness:", "base-60"),
+        (changed("1 kN/mm", "1e5"), "5:46: connections.mount.stiffness:", "1.0e+5"),
+        (changed("1 kN/mm", "-.INF"), "5:46: connections.mount.stiffness:", "finite"),
+        (changed("1 kN/mm", "0x10"), "5:46: connections.mount.stiffness:", "hexadecimal"),
+        (changed("1 kN/mm", "1_000"), "5:46: connections.mount.stiffness:", "1000"),
+        (changed("1 kN/mm", "12"), "5:46: connections.mount.stiffness:", "N/m"),
+        (changed("1 kN/mm", "1 kg"), "5:46: connections.mount.stiffness:", "N/m"),
+        (changed("1 kN/mm", "1 lb/in"), "5:46: connections.mount.stiffness:", "lbf/in"),
+        (changed("1 kN/mm", "null"), "5:46: connections.mount.stiffness:", "no value"),
+        (changed("1 kN/mm", "true"), "5:46: connections.mount.stiffness:", "a number belongs"),
+        (changed("1 kN/mm", "[1 kN/mm]"), "5:46: connections.mount.stiffness:", "a list"),
+        (changed("100 kg", "{massless: on}"), "3:19: bodies.fan.massless:", "true or false"),
+        (changed("100 kg", "{massless: off}"), "3:19: bodies.fan.massless:", "true or false"),
+        (changed("  fan:", "  no:"), "3:3: bodies.no:", "quotes"),
+        (changed("100 kg", "240 lbf"), "3:8: bodies.fan", "weight"),
+        (changed("100 kg", "0 kg"), "3:8: bodies.fan", "massless: true"),
+        (changed("bodies:", "bodys:"), "2:1: bodys:", "`bodies`"),
         (changed("100 kg", "yes"), "3:8: bodies.fan", "yes"),
         (changed("100 kg", "100 lbf*s"), "3:8: bodies.fan", "kg"),
         (changed("100 kg", "-100 kg"), "3:8: bodies.fan", "negative mass"),
@@ -63,6 +103,31 @@ def changed(old: str, new: str) -> str:
         (GOOD + "reference_frequency: 12\n", "6:22: reference_frequency:", "Hz"),
         (GOOD + "criteria: {below: 60}\n", "6:19: criteria.below:", "Hz"),
         (changed("  fan: 100 kg", "  fan: {mass: 100 kg"), "", "{"),
+        (spatial("at: [0 m, 0 m, 0 m]", "at: [0, 0 m, 0 m]"), "5:40: connections.mount.at.0:", "unit"),
+        (spatial("inertia: [4", "inertia: [14"), "3:57: bodies.fan.inertia:", "no real body"),
+        (spatial(", inertia: [4 kg*m^2, 5 kg*m^2, 6 kg*m^2]", ""), "3:3: bodies.fan:", "no inertia"),
+        (
+            spatial("stiffness: {x: 1 kN/mm, z: 2 kN/mm}", "axis: [0, 0, 0], stiffness: 1 kN/mm"),
+            "5:62: connections.mount.axis:",
+            "zero",
+        ),
+        (
+            spatial("at: [0 m, 0 m, 0 m]", "ends: [[0 m, 0 m, 0 m], [0 m, 0 m, 0 m]]"),
+            "5:41: connections.mount.ends:",
+            "same point",
+        ),
+        (spatial("stiffness: {x: 1 kN/mm, z: 2 kN/mm}", "uses: rubber"), "5:62: connections.mount.uses:", "`rubber`"),
+        (spatial("{x: 1", "{q: 1"), "5:68: connections.mount.stiffness.q:", "rx, ry, rz"),
+        (spatial("{x: 1 kN/mm, z: 2 kN/mm}", "1 kN/mm"), "5:67: connections.mount.stiffness:", "{x: 1 kN/mm"),
+        (spatial("z: 2 kN/mm", "rx: 2 kN/mm"), "5:84: connections.mount.stiffness.rx:", "N*m"),
+        (spatial("rz]", "rw]"), "1:31: directions.5:", "rx, ry, rz"),
+        (spatial("full: {bodies: {fan:", "full: {bodies: {fam:"), "7:19: states.full.bodies.fam:", "`fan`"),
+        (spatial("full: {bodies", "full: {from: half, bodies"), "7:16: states.full.from:", "`half`"),
+        (
+            spatial("full: {bodies: {fan: {mass: 140 kg}}}", "full: {scale: {bodies.fan.mas: 2}}"),
+            "7:18: states.full.scale.bodies.fan.mas:",
+            "`bodies.fan.mass`",
+        ),
         ("", "1:1:", "empty"),
         ("# nothing but a comment\n", "1:1:", "empty"),
         ("- 1\n- 2\n", "1:1:", "mapping"),
@@ -70,16 +135,28 @@ def changed(old: str, new: str) -> str:
         ("a: &a [1, 1]\nb: &b [*a, *a]\nc: &c [*b, *b]\nd: [*c, *c]\n", "1:4:", "anchor"),
         ("\x00\x01\x02PNG", "", "not a text file"),
         ("x" * 10_000_000, "", "MB"),
-        ("\n".join(f"key{number}: [{number}, " for number in range(200_000)), "", ""),
+        ("\n".join(f"key{number}: [{number}, " for number in range(200_000)), "13:1:", "nested"),
+        ("".join(f"{' ' * depth}a:\n" for depth in range(2000)), "", "nested"),
     ],
     ids=lambda value: repr(value[:24]) if isinstance(value, str) else None,
 )
-def test_a_wrong_file_is_told_with_its_place(tmp_path: Path, text: str, place: str, words: str) -> None:
+def test_a_wrong_file_is_told_with_its_place(
+    tmp_path: Path,
+    monkeypatch: pytest.MonkeyPatch,
+    capfd: pytest.CaptureFixture[str],
+    text: str,
+    place: str,
+    words: str,
+) -> None:
     (tmp_path / "fan.yaml").write_bytes(text.encode())
-    said = modes(tmp_path, "fan.yaml", "--archive", "runs")
-    assert re.match(r"(error: )?fan\.yaml", said), said
+    monkeypatch.chdir(tmp_path)
+    assert main(["modes", "fan.yaml", "--archive", "runs"]) == 2
+    shown, said = capfd.readouterr()
+    assert shown == ""
     assert f"fan.yaml:{place}" in said, said
     assert words in said, said
+    # Everything said is placed, or shows the line that the place above is in.
+    assert all(re.match(r"fan\.yaml:| {4}|and \d+ more", line) for line in said.splitlines()), said
     assert len(said) < 60_000
     assert sorted(path.name for path in tmp_path.iterdir()) == ["fan.yaml"]
 

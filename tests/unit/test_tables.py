@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 import math
+import re
 from io import StringIO
+from pathlib import Path
 
 import networkx as nx
 import pytest
@@ -12,10 +14,15 @@ from rich.cells import cell_len
 import mdof
 from mdof.findings import finding
 from mdof.modes.mode import DampedModes
-from mdof.report.look import Look, aligned, fold, number, percent
+from mdof.report.checking import check_model
+from mdof.report.layout import fold
+from mdof.report.look import Look, aligned, number, percent
 from mdof.report.records import csv_line, json_line
 from mdof.report.screening import screen
+from mdof.report.summaries import check_text
 from mdof.report.tables import cautions, dissipates_most, findings_block, mode_table, moves_most
+
+MODELS = Path(__file__).parents[2] / "models"
 
 
 @pytest.fixture(scope="module")
@@ -96,6 +103,28 @@ def test_every_width_fits_and_shows_every_mode(modes: DampedModes, width: int | 
     assert "\x1b" not in text
 
 
+def test_shares_go_before_names_are_broken(modes: DampedModes) -> None:
+    roomy, tight = table(modes, Look(width=100)), table(modes, Look(width=76))
+    assert [line.count("%") for line in roomy.splitlines()[2:]] == [2, 2, 2]
+    assert [line.count("%") for line in tight.splitlines()[2:]] == [1, 1, 1]
+    assert re.search(r"moves +damps$", tight.splitlines()[0])
+    assert "100 % pot ×2" in tight
+
+
+@pytest.mark.parametrize("width", [50, 80, 120, None])
+@pytest.mark.parametrize(
+    ("stiffness", "damping", "told"), [(0.0, 6.0, "rigid body 0.600 1/s"), (-10.0, 0.0, "divergent 1.00 1/s")]
+)
+def test_a_mode_without_frequency_tells_its_rate(
+    stiffness: float, damping: float, told: str, width: int | None
+) -> None:
+    graph = nx.MultiGraph(directions=("x",))
+    graph.add_node("ground", kind="ground")
+    graph.add_node("trolley", mass=10.0)
+    graph.add_edge("trolley", "ground", key="rail", between=("trolley", "ground"), stiffness=stiffness, damping=damping)
+    assert told in table(mdof.solve(mdof.assemble(graph)), Look(width=width))
+
+
 def test_names_are_never_read_as_markup(modes: DampedModes) -> None:
     assert "[red]pump[/red]" in table(modes, Look())
 
@@ -158,6 +187,25 @@ def test_csv_quotes_and_json_refuses_nan() -> None:
     assert json_line({"name": "発電機"}) == '{"name": "発電機"}\n'.encode()
     with pytest.raises(ValueError, match="JSON"):
         json_line({"bad": math.nan})
+
+
+def check(name: str, width: int | None) -> str:
+    return check_text(check_model(mdof.load(MODELS / name)), Look(width=width))
+
+
+def test_a_narrow_check_breaks_no_number() -> None:
+    wide, narrow = check("firewater_skid.yaml", 100), check("firewater_skid.yaml", 50)
+    assert "frame_aft  1285.0       -0.950       0.000       0.190" in wide
+    assert "frame_aft\n    1285.0 kg at -0.950, 0.000, 0.190 m\n" in narrow
+    assert max(map(cell_len, narrow.splitlines())) <= 50
+
+
+def test_a_train_shows_inertias_and_that_it_turns_freely() -> None:
+    text = check("geared_train.yaml", 80)
+    assert "body        inertia kg m²\nmotor               9.600\n" in text
+    assert "all 4" not in text
+    assert "no body by itself, but bodies together" in text
+    assert "every body is tied" in check("two_mass.yaml", 80)
 
 
 def test_screening_judges_only_what_it_should(modes: DampedModes) -> None:
