@@ -45,6 +45,13 @@ def nearest(word: str, choices: Any) -> str | None:
 
 @lru_cache(maxsize=2048)
 def factor_of(unit: str) -> tuple[Fraction, Exponents]:
+    """What one of ``unit`` is in SI, exactly, with its exponents of mass, length, time and angle.
+
+    Raises
+    ------
+    QuantityError
+        If it is not a unit, with what to write instead.
+    """
     clean = (
         unit.strip().translate(_SIGNS).replace("**", "^").replace(" ", "") if " " not in unit.strip() else _joined(unit)
     )
@@ -66,6 +73,7 @@ def _joined(unit: str) -> str:
 
 
 def fraction(text: str) -> Fraction:
+    """A factor of the table of common units: a decimal number, a product or a quotient of two."""
     if "*" in text:
         left, right = text.split("*")
         return Fraction(left) * Fraction(right)
@@ -142,6 +150,7 @@ def _add(into: dict[str, int], powers: dict[str, int] | None, sign: int) -> None
 
 
 def known(name: str, written: str) -> str:
+    """The name if pint was told of it, refused with the nearest one if not; ``written`` is the whole unit."""
     if name == "%":
         return "percent"
     if name in NAMES and name != "percent":

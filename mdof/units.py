@@ -15,6 +15,7 @@ import math
 import re
 from collections.abc import Mapping
 from fractions import Fraction
+from functools import lru_cache
 from typing import Any
 
 from mdof.unit_parsing import LONGEST_UNIT, QuantityError, factor_of, nearest, short
@@ -48,11 +49,11 @@ def read(value: Any, dimension: str | tuple[str, ...], defaults: Mapping[str, st
     """
     names = (dimension,) if isinstance(dimension, str) else dimension
     if isinstance(value, str):
-        number, unit = _split(value, names)
+        text, unit = _split(value, names)
     else:
-        number, unit = _plain(value, names), ""
+        text, unit = _plain(value, names), ""
     if unit:
-        worth, name = _judged(value, number, unit, names)
+        worth, name = _judged(value, text, unit, names)
     else:
         wanted = DIMENSIONS[names[0]]
         if isinstance(value, str) and wanted.name != "number":
@@ -62,12 +63,16 @@ def read(value: Any, dimension: str | tuple[str, ...], defaults: Mapping[str, st
                 f"`{short(value)}` is a number in quotes, which is text",
                 f"write {short(value.strip())} without quotes",
             )
-        worth, name = _default_factor(number, wanted, defaults), wanted.name
+        worth, name = _default_factor(text, wanted, defaults), wanted.name
+    number = float(text)
+    if number == 0.0:
+        return 0.0, name
     try:
-        result = float(number * worth) if number else 0.0
+        # In the SI unit itself float() has rounded once already; most numbers are, and fractions take their time.
+        result = number if worth == 1 else float(Fraction(text) * worth)
     except OverflowError:
         result = math.inf
-    if number and (result == 0.0 or not math.isfinite(result)):
+    if result == 0.0 or not math.isfinite(result):
         raise QuantityError(f"{short(str(value))} is beyond the range of numbers", f"write {_as_example(names)}")
     return result, name
 
@@ -84,11 +89,12 @@ def factor(unit: str, dimension: str | None = None) -> tuple[Fraction, Exponents
     """
     if dimension is None:
         return factor_of(unit)
-    worth, _ = _judged(f"1 {unit}", Fraction(1), unit, (dimension,))
+    worth, _ = _judged(f"1 {unit}", "1", unit, (dimension,))
     return worth, DIMENSIONS[dimension].exponents[0]
 
 
-def _split(text: str, names: tuple[str, ...]) -> tuple[Fraction, str]:
+def _split(text: str, names: tuple[str, ...]) -> tuple[str, str]:
+    """The number, as text that float() and Fraction() read without harm, and the unit."""
     stripped = text.strip()
     match = _NUMBER.match(stripped) if len(stripped) <= _LONGEST_NUMBER + LONGEST_UNIT else None
     if match is None:
@@ -100,10 +106,10 @@ def _split(text: str, names: tuple[str, ...]) -> tuple[Fraction, str]:
             f"`{short(text)}` is not a number",
             f"write digits with a decimal point only, such as {DIMENSIONS[names[0]].example}",
         )
-    return _exact(match.group(), names), rest.strip()
+    return _in_range(match.group(), names), rest.strip()
 
 
-def _plain(value: Any, names: tuple[str, ...]) -> Fraction:
+def _plain(value: Any, names: tuple[str, ...]) -> str:
     if isinstance(value, bool) or not hasattr(value, "__float__") or isinstance(value, complex):
         raise QuantityError(f"{_kind(value)} where a number belongs", f"write {_as_example(names)}")
     try:
@@ -113,22 +119,22 @@ def _plain(value: Any, names: tuple[str, ...]) -> Fraction:
     if not math.isfinite(number):
         raise QuantityError(f"{number} is not a number to calculate with", f"write {_as_example(names)}")
     # The shortest decimal text of the float is what was written.
-    return Fraction(repr(number))
+    return repr(number or 0.0)  # no negative zero
 
 
-def _exact(text: str, names: tuple[str, ...]) -> Fraction:
+def _in_range(text: str, names: tuple[str, ...]) -> str:
     # float() judges the size first, because an exact 1e999999999 would fill the memory.
     number = float(text) if len(text) <= _LONGEST_NUMBER else math.inf
     if not math.isfinite(number) or (number == 0.0 and re.search(r"[1-9]", re.split("[eE]", text)[0])):
         raise QuantityError(f"{short(text)} is beyond the range of numbers", f"write {_as_example(names)}")
-    return Fraction(text) if number else Fraction(0)
+    return text if number else "0"
 
 
-def _default_factor(number: Fraction, wanted: Dimension, defaults: Mapping[str, str] | None) -> Fraction:
+def _default_factor(text: str, wanted: Dimension, defaults: Mapping[str, str] | None) -> Fraction:
     if wanted.name == "number":
         return Fraction(1)
     defaults = defaults or {}
-    shown = f"{float(number):.12g}"
+    shown = f"{float(text):.12g}"
     if wanted.always:
         raise QuantityError(f"{wanted.words} always needs its unit", f"write {shown} Hz, {shown} rpm or {shown} rad/s")
     unit = defaults.get(wanted.name)
@@ -141,8 +147,17 @@ def _default_factor(number: Fraction, wanted: Dimension, defaults: Mapping[str, 
     return Fraction(1) if unit is None else factor(unit, wanted.name)[0]
 
 
-def _judged(value: Any, number: Fraction, unit: str, names: tuple[str, ...]) -> tuple[Fraction, str]:
+def _judged(value: Any, text: str, unit: str, names: tuple[str, ...]) -> tuple[Fraction, str]:
     """Factor to SI and the dimension that fits; refuses a unit of another kind with the text to write."""
+    fitting = _fitting(unit, names)
+    if fitting is None:
+        raise _mismatch(str(value), text, unit, *factor_of(unit), names)
+    return fitting
+
+
+@lru_cache(maxsize=2048)
+def _fitting(unit: str, names: tuple[str, ...]) -> tuple[Fraction, str] | None:
+    """Factor to SI and the first of the dimensions that the unit has, with ``g`` as gravity where only that fits."""
     found, exponents = factor_of(unit)
     for name in names:
         if exponents in DIMENSIONS[name].exponents:
@@ -153,7 +168,7 @@ def _judged(value: Any, number: Fraction, unit: str, names: tuple[str, ...]) -> 
         for name in names:
             if gravity_exponents in DIMENSIONS[name].exponents:
                 return _to_kept(with_gravity, name), name
-    raise _mismatch(str(value), number, unit, found, exponents, names)
+    return None
 
 
 def _to_kept(found: Fraction, name: str) -> Fraction:
@@ -166,20 +181,23 @@ def _spectrum_scale() -> Fraction:
 
 
 def _mismatch(
-    value: str, number: Fraction, unit: str, found: Fraction, exponents: Exponents, names: tuple[str, ...]
+    value: str, text: str, unit: str, found: Fraction, exponents: Exponents, names: tuple[str, ...]
 ) -> QuantityError:
     wanted = DIMENSIONS[names[0]]
     is_what = _WORDS.get(exponents, "something else")
     message = f"`{short(value)}` is {is_what}, not {wanted.words}"
-    shown = f"{float(number):.12g}"
-    if wanted.name == "mass" and exponents == (1, 1, -2, 0):
-        as_mass = {"lbf": f"`{shown} lb`", "kgf": f"`{shown} kg`"}.get(
-            unit, f"`{float(number * found) / 9.80665:.6g} kg`"
-        )
+    shown = f"{float(text):.12g}"
+    try:
+        in_si = float(Fraction(text) * found)
+    except OverflowError:
+        in_si = math.inf
+    showable = math.isfinite(in_si * 9.80665)
+    if showable and wanted.name == "mass" and exponents == (1, 1, -2, 0):
+        as_mass = {"lbf": f"`{shown} lb`", "kgf": f"`{shown} kg`"}.get(unit, f"`{in_si / 9.80665:.6g} kg`")
         return QuantityError(message, f"write {as_mass}, or `weight: {short(value)}` instead of `mass`")
-    if wanted.name == "force" and exponents == (1, 0, 0, 0):
+    if showable and wanted.name == "force" and exponents == (1, 0, 0, 0):
         as_force = {"kg": f"`{shown} kgf`", "lb": f"`{shown} lbf`", "oz": f"`{shown} ozf`"}.get(unit)
-        newton = f"`{float(number * found) * 9.80665:.6g} N`"
+        newton = f"`{in_si * 9.80665:.6g} N`"
         way = f"write {as_force} or {newton}" if as_force else f"write {newton}"
         return QuantityError(message, f"{way} for its weight, or give it as `mass`")
     for name in names:

@@ -1,6 +1,6 @@
 """Schema of bodies and supports, and the mass properties that follow from what was written."""
 
-from __future__ import annotations
+# Annotations are evaluated as they are written: pydantic needs them all at once, and evaluating their text is slower.
 
 from collections.abc import Mapping
 from dataclasses import dataclass
@@ -10,7 +10,8 @@ import numpy as np
 from numpy.typing import NDArray
 from pydantic import Field
 
-from mdof.description.fields import Quantity, Reads, Refused, Section, Trouble, context_of, read_quantity, refuse
+from mdof.description.fields import Reads, Section, context_of
+from mdof.description.quantities import Quantity, Refused, Trouble, read_quantity, refuse
 from mdof.description.readers import DIRECTION_LIST, POINT, TEXT, TRUTH, VECTOR, each, of
 
 __all__ = ["Body", "BodyPart", "Contents", "MassProperties", "Spin", "Support", "mass_properties"]

@@ -7,7 +7,7 @@ from collections.abc import Iterator
 import numpy as np
 
 from mdof.description.bodies import Body, BodyPart, mass_properties
-from mdof.description.fields import DIRECTIONS, Quantity, Trouble
+from mdof.description.quantities import DIRECTIONS, Quantity, Trouble
 
 __all__ = ["body_troubles"]
 

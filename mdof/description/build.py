@@ -10,7 +10,8 @@ from pydantic import ValidationError
 
 from mdof.description.bodies import Body, Support
 from mdof.description.connections import Connection, PropertySet
-from mdof.description.fields import Context, Refused, Section, Trouble, kind_of, troubles, unknown_key
+from mdof.description.fields import Section, troubles
+from mdof.description.quantities import Context, Refused, Trouble, kind_of, unknown_key
 from mdof.description.readers import DIRECTION_LIST, NAME_RULE, TEXT, name_fault
 from mdof.description.readers import of as quantity_of
 from mdof.description.whole import Criteria, Damping, Load, Watch

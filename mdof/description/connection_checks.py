@@ -8,7 +8,7 @@ from typing import Any
 import numpy as np
 
 from mdof.description.connections import DIRECTIONAL, Connection, PropertySet, Values, effective
-from mdof.description.fields import DIRECTIONS, Quantity, Trouble
+from mdof.description.quantities import DIRECTIONS, Quantity, Trouble
 from mdof.description.special_checks import beam_troubles, gear_troubles, rigid_link_troubles
 from mdof.description.surroundings import Surroundings, unknown_name
 

@@ -1,23 +1,14 @@
 """Schema of connections and property sets, and what each comes to once sets and named points are written out."""
 
-from __future__ import annotations
+# Annotations are evaluated as they are written: pydantic needs them all at once, and evaluating their text is slower.
 
 from collections.abc import Mapping
 from typing import Annotated, Any, ClassVar
 
 from pydantic import Field
 
-from mdof.description.fields import (
-    MOST_UNKNOWN,
-    Quantity,
-    Reads,
-    Refused,
-    Section,
-    Trouble,
-    context_of,
-    read_quantity,
-    refuse,
-)
+from mdof.description.fields import Reads, Section, context_of
+from mdof.description.quantities import MOST_UNKNOWN, Quantity, Refused, Trouble, read_quantity, refuse
 from mdof.description.readers import (
     POINT,
     POINT_WORDS,

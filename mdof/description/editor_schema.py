@@ -11,7 +11,8 @@ from pydantic.json_schema import GenerateJsonSchema
 
 from mdof.description.bodies import Body, Support
 from mdof.description.connections import Connection, PropertySet
-from mdof.description.fields import Quantity, Section
+from mdof.description.fields import Section
+from mdof.description.quantities import Quantity
 from mdof.description.readers import DIRECTION_LIST, TEXT, of
 from mdof.description.whole import Criteria, Damping, Load, Watch
 from mdof.units import DIMENSIONS

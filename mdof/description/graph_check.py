@@ -7,7 +7,7 @@ from typing import Any
 
 import numpy as np
 
-from mdof.description.fields import DIRECTIONS
+from mdof.description.quantities import DIRECTIONS
 from mdof.errors import ModelError, Problem
 from mdof.units import nearest
 

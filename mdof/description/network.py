@@ -26,9 +26,9 @@ import networkx as nx
 import numpy as np
 
 from mdof.description.bodies import Body, mass_properties
-from mdof.description.fields import Quantity
 from mdof.description.graph_check import validate_graph
 from mdof.description.network_findings import Summary, network_findings, summary
+from mdof.description.quantities import Quantity
 from mdof.description.resolved import expanded, kind_words
 
 if TYPE_CHECKING:

@@ -8,7 +8,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from mdof.description.fields import DIRECTIONS
+from mdof.description.quantities import DIRECTIONS
 
 __all__ = ["Held", "NetworkView"]
 

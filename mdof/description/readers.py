@@ -6,16 +6,15 @@ import math
 from collections.abc import Callable, Mapping, Sequence
 from typing import Any, cast
 
-from mdof.description.fields import (
+from mdof.description.fields import Reads, context_of
+from mdof.description.quantities import (
     DIRECTIONS,
     MOST_UNKNOWN,
     QUANTITY_KEYS,
     Context,
     Quantity,
-    Reads,
     Refused,
     Trouble,
-    context_of,
     kind_of,
     read_quantity,
     refuse,

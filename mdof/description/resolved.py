@@ -11,7 +11,7 @@ import numpy as np
 
 from mdof.description.bodies import Body, MassProperties, mass_properties
 from mdof.description.connections import Connection, effective
-from mdof.description.fields import Quantity
+from mdof.description.quantities import Quantity
 
 __all__ = ["digest_of", "expanded", "kind_words", "to_si"]
 

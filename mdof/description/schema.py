@@ -11,7 +11,7 @@ from typing import TYPE_CHECKING, Any
 from mdof.description.build import Memory, build
 from mdof.description.document import Document
 from mdof.description.document import Path as KeyPath
-from mdof.description.fields import Quantity
+from mdof.description.quantities import Quantity
 from mdof.description.resolved import digest_of, to_si
 from mdof.description.state_problems import place_in_state, placed, state_problems
 from mdof.description.states import state_of

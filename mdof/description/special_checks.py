@@ -8,7 +8,7 @@ from typing import Any
 import numpy as np
 
 from mdof.description.connections import Connection
-from mdof.description.fields import Quantity, Trouble
+from mdof.description.quantities import Quantity, Trouble
 from mdof.description.surroundings import Surroundings, unknown_name
 
 __all__ = ["beam_troubles", "gear_troubles", "rigid_link_troubles", "rigid_troubles"]

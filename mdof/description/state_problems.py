@@ -8,7 +8,7 @@ from typing import Any
 from mdof.description.build import Memory, build
 from mdof.description.document import Document, dotted, visible
 from mdof.description.document import Path as KeyPath
-from mdof.description.fields import Trouble, kind_of
+from mdof.description.quantities import Trouble, kind_of
 from mdof.description.readers import NAME_RULE
 from mdof.description.states import chain, state_of
 from mdof.description.whole_checks import MOST_TROUBLES
@@ -23,6 +23,10 @@ _MOST_STATES = 100
 def state_problems(
     raw: Mapping[str, Any], document: Document | None, memory: Memory, seen: set[tuple[KeyPath, str]]
 ) -> list[Problem]:
+    """What is wrong with the states of a model, each fault told once, in the state that makes it.
+
+    ``seen`` holds path and message of what is wrong with the model itself and is not told again.
+    """
     states = raw.get("states")
     if states is None:
         return (
@@ -67,6 +71,7 @@ def state_problems(
 
 
 def placed(trouble: Trouble, document: Document | None) -> Problem:
+    """The complaint with its place in the file; without a file, with its key path alone."""
     if document is None:
         return Problem(path=dotted(trouble.path), message=visible(trouble.message), expected=visible(trouble.expected))
     return document.place(trouble.path, trouble.message, trouble.expected, on_key=trouble.on_key)

@@ -8,7 +8,7 @@ from typing import Any
 
 from mdof.description.bodies import Body
 from mdof.description.build import NAMED, TOP
-from mdof.description.fields import MOST_UNKNOWN, Scaled, Trouble, kind_of
+from mdof.description.quantities import MOST_UNKNOWN, Scaled, Trouble, kind_of
 from mdof.description.readers import NAME_RULE, name_fault
 from mdof.description.surroundings import unknown_name
 from mdof.units import QuantityError, convert, nearest

@@ -11,7 +11,7 @@ from typing import Any
 
 from mdof.description.document import Document, Path, Span
 from mdof.description.scalars import resolve
-from mdof.description.yaml_syntax import _DEEPEST, hidden_character, span_of, syntax_problem
+from mdof.description.yaml_syntax import DEEPEST, hidden_character, span_of, syntax_problem
 
 __all__ = ["parse"]
 
@@ -24,13 +24,15 @@ class _Stopped(Exception):
 
 
 class _Frame:
-    """An open mapping or list."""
+    """An open mapping or list; ``place`` is the path of the value that follows the key just read."""
 
-    __slots__ = ("container", "dropped", "key", "path")
+    __slots__ = ("container", "dropped", "key", "mapping", "path", "place")
 
     def __init__(self, container: Any, path: Path, dropped: bool) -> None:
         self.container = container
+        self.mapping = isinstance(container, dict)
         self.path = path
+        self.place = path
         self.dropped = dropped
         self.key: str | None = None
 
@@ -117,10 +119,14 @@ class _Builder:
         if not self.stack:
             return ()
         frame = self.stack[-1]
-        return (*frame.path, frame.key if frame.key is not None else len(frame.container))
+        return (*frame.path, len(frame.container)) if frame.key is None else frame.place
 
     def wants_key(self) -> bool:
-        return bool(self.stack) and isinstance(self.stack[-1].container, dict) and self.stack[-1].key is None
+        return bool(self.stack) and self.stack[-1].mapping and self.stack[-1].key is None
+
+    def dropped(self) -> bool:
+        """True where what comes next is read and thrown away; a frame inherits it from the one around it."""
+        return bool(self.stack) and self.stack[-1].dropped
 
     def refuse_decoration(self, event: Any, path: Path) -> None:
         if event.anchor is not None:
@@ -139,11 +145,10 @@ class _Builder:
             self.complain(
                 event, self.stack[-1].path, f"a key cannot be an alias (*{event.anchor[:40]})", "write the key out"
             )
-            self.stack[-1].key = f"*{event.anchor}"
-            self.stack[-1].dropped = True
+            self.await_value(f"*{event.anchor}", dropped=True)
             return
         path = self.here()
-        if not (self.stack and self.stack[-1].dropped):
+        if not self.dropped():
             self.complain(
                 event,
                 path,
@@ -152,12 +157,20 @@ class _Builder:
             )
         self.put(None, event, path)
 
+    def await_value(self, key: str, *, dropped: bool = False) -> None:
+        """The mapping on top has read a key; a dropped one takes its value with it."""
+        frame = self.stack[-1]
+        frame.key = key
+        frame.place = (*frame.path, key)
+        frame.dropped = frame.dropped or dropped
+
     def scalar(self, event: Any) -> None:
         plain = event.implicit[0] and event.style in (None, "")
+        is_key = self.wants_key()
         if not event.value.isprintable() and (hidden := hidden_character(event.value)):
-            where = self.stack[-1].path if self.wants_key() else self.here()
+            where = self.stack[-1].path if is_key else self.here()
             self.complain(event, where, f"the text holds U+{ord(hidden):04X}, which a person cannot see", "remove it")
-        if self.wants_key():
+        if is_key:
             self.key(event, plain)
             return
         path = self.here()
@@ -170,15 +183,11 @@ class _Builder:
                 self.complain(event, path, complaint, expected)
         self.put(value, event, path)
 
-    def dropped(self) -> bool:
-        return any(frame.dropped for frame in self.stack)
-
     def key(self, event: Any, plain: bool) -> None:
         frame = self.stack[-1]
         name = event.value
-        path = (*frame.path, name)
-        frame.key = name
-        frame.dropped = False
+        self.await_value(name)
+        path = frame.place
         if event.anchor is not None or event.tag is not None:
             self.refuse_decoration(event, path)
         if plain and name == "<<":
@@ -210,12 +219,12 @@ class _Builder:
                 unreadable=False,
             )
             frame.dropped = True
-        if not frame.dropped and not self.dropped():
+        if not frame.dropped:
             self.document.keys.setdefault(path, span_of(event))
 
     def open(self, event: Any, mapping: bool) -> None:
-        if len(self.stack) >= _DEEPEST:
-            self.complain(event, self.stack[2].path, "nested too deeply for a model", f"use at most {_DEEPEST} levels")
+        if len(self.stack) >= DEEPEST:
+            self.complain(event, self.stack[2].path, "nested too deeply for a model", f"use at most {DEEPEST} levels")
             raise _Stopped
         if self.wants_key():
             frame = self.stack[-1]
@@ -227,10 +236,8 @@ class _Builder:
                 unreadable=False,
             )
             # The complex key is read and thrown away together with its value.
-            frame.key = ""
-            frame.dropped = True
-            self.stack.append(_Frame({} if mapping else [], (*frame.path, ""), True))
-            self.stack[-1].path = (*frame.path, "?")
+            self.await_value("", dropped=True)
+            self.stack.append(_Frame({} if mapping else [], (*frame.path, "?"), True))
             return
         path = self.here()
         if event.anchor is not None or event.tag is not None:
@@ -254,19 +261,20 @@ class _Builder:
         if self.count > _MOST_VALUES:
             self.complain(event, (), f"more than {_MOST_VALUES} values in one model", "split the model")
             raise _Stopped
-        if not self.dropped():
+        frame = self.stack[-1] if self.stack else None
+        if frame is None or not frame.dropped:
             self.document.values[path] = span_of(event)
-            if not self.stack:
+            if frame is None:
                 self.document.data = value
-            elif isinstance(self.stack[-1].container, dict):
-                self.stack[-1].container[self.stack[-1].key] = value
+            elif frame.mapping:
+                frame.container[frame.key] = value
             else:
-                self.stack[-1].container.append(value)
+                frame.container.append(value)
         if closes:
             self.after_value()
 
     def after_value(self) -> None:
-        if self.stack and isinstance(self.stack[-1].container, dict):
+        if self.stack and self.stack[-1].mapping:
             frame = self.stack[-1]
             frame.key = None
             # A mapping inside a dropped value stays dropped; only what this mapping dropped itself ends here.

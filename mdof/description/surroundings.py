@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from typing import Any
 
 from mdof.description.connections import PropertySet
-from mdof.description.fields import Trouble
+from mdof.description.quantities import Trouble
 from mdof.units import nearest
 
 __all__ = ["Surroundings", "unknown_name"]

@@ -1,24 +1,14 @@
 """Schema of what concerns the whole model: damping, watched points, loads and criteria."""
 
-from __future__ import annotations
+# Annotations are evaluated as they are written: pydantic needs them all at once, and evaluating their text is slower.
 
 from collections.abc import Mapping
 from typing import Annotated, Any, ClassVar
 
 from pydantic import Field
 
-from mdof.description.fields import (
-    DIRECTIONS,
-    MOST_UNKNOWN,
-    Quantity,
-    Reads,
-    Refused,
-    Section,
-    Trouble,
-    context_of,
-    read_quantity,
-    refuse,
-)
+from mdof.description.fields import Reads, Section, context_of
+from mdof.description.quantities import DIRECTIONS, MOST_UNKNOWN, Quantity, Refused, Trouble, read_quantity, refuse
 from mdof.description.readers import POINT, TEXT, VECTOR, choice, each, of, plain, triple_of
 
 __all__ = ["Criteria", "Damping", "Load", "Settle", "VelocityLimit", "Watch"]

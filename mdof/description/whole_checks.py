@@ -8,7 +8,7 @@ from typing import Any
 
 from mdof.description.body_checks import body_troubles
 from mdof.description.connection_checks import connection_troubles, property_set_troubles
-from mdof.description.fields import Trouble
+from mdof.description.quantities import Trouble
 from mdof.description.special_checks import rigid_troubles
 from mdof.description.surroundings import Surroundings, unknown_name
 from mdof.description.whole import Damping, Load

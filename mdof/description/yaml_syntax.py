@@ -1,4 +1,4 @@
-"""What libyaml says about broken syntax, in words a writer of models understands."""
+"""What the YAML parser says about broken syntax, in words a writer of models understands."""
 
 from __future__ import annotations
 
@@ -7,11 +7,11 @@ from typing import Any
 from mdof.description.document import Document, Span
 from mdof.errors import Problem
 
-__all__ = ["hidden_character", "span_of", "syntax_problem"]
+__all__ = ["DEEPEST", "hidden_character", "span_of", "syntax_problem"]
 
 
 #: Deeper than any model can mean.
-_DEEPEST = 24
+DEEPEST = 24
 
 
 def hidden_character(text: str) -> str | None:
@@ -24,8 +24,9 @@ def span_of(event: Any) -> Span:
     return Span(start.line + 1, start.column + 1, end.line + 1, end.column + 1)
 
 
+#: Part of the parser's text (libyaml's, or that of PyYAML's own parser), what it means, what to do.
 _SYNTAX = (
-    ("exceeded maximum nesting depth", "nested too deeply for a model", f"use at most {_DEEPEST} levels"),
+    ("exceeded maximum nesting depth", "nested too deeply for a model", f"use at most {DEEPEST} levels"),
     (
         "mapping values are not allowed",
         "there is a second `key: value` on this line",
@@ -33,12 +34,12 @@ _SYNTAX = (
     ),
     ("could not find expected ':'", "a key without a colon", "write key: value (with a blank after the colon)"),
     (
-        "did not find expected ',' or '}'",
+        "expected ',' or '}'",
         "a { ... } is not closed here, or a comma is missing",
         "close it with } or separate its keys with commas",
     ),
     (
-        "did not find expected ',' or ']'",
+        "expected ',' or ']'",
         "a [ ... ] is not closed here, or a comma is missing",
         "close it with ] or separate its values with commas",
     ),
@@ -51,6 +52,11 @@ _SYNTAX = (
         "did not find expected '-' indicator",
         "this line does not line up with the list above it",
         "indent the dashes of one list equally",
+    ),
+    (
+        "expected <block end>",
+        "this line does not line up with the lines above it",
+        "indent the keys of one mapping, or the dashes of one list, equally",
     ),
     ("did not find expected node content", "a value is missing here", "write a value"),
     (

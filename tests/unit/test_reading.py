@@ -5,6 +5,7 @@ from __future__ import annotations
 from pathlib import Path
 
 import pytest
+import yaml
 
 import mdof
 from mdof.description.reading import LARGEST_FILE, load, read_document
@@ -12,6 +13,7 @@ from mdof.description.scalars import resolve
 from mdof.description.strict_yaml import parse
 from mdof.errors import ModelError
 
+MODELS = sorted((Path(__file__).parents[2] / "models").glob("*.yaml"))
 GOOD = "units: SI\nbodies: {m: 10}\nconnections: {s: {between: [m, ground], stiffness: 1000}}\n"
 
 
@@ -216,6 +218,47 @@ def test_every_value_and_key_keeps_its_span() -> None:
     for path, span in document.keys.items():
         assert lines[span.line - 1][span.column - 1 : span.end_column - 1] == path[-1]
     assert set(document.keys) | {("bodies", "pump", "centre", i) for i in range(3)} | {()} == set(document.values)
+
+
+def test_a_key_written_twice_leaves_the_first_value_and_its_span_alone() -> None:
+    """Breaks if what is thrown away still moves the end of the value that is kept."""
+    document = parse("bodies:\n  pump: {mass: 1 kg}\nbodies:\n  pump: {mass: 2 kg, centre: [0, 0, 0]}\n")
+    assert document.data == {"bodies": {"pump": {"mass": "1 kg"}}}
+    assert document.values["bodies", "pump"] == (2, 9, 2, 21)
+    assert [(problem.line, problem.path) for problem in document.problems] == [(3, "bodies")]
+
+
+@pytest.mark.parametrize("path", MODELS, ids=lambda path: path.stem)
+def test_without_libyaml_a_model_reads_the_same(path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    """Breaks if values or places come out otherwise where PyYAML was built without its C parser."""
+    fast = read_document(path)
+    monkeypatch.delattr(yaml, "CSafeLoader", raising=False)
+    slow = read_document(path)
+    assert not slow.problems
+    assert slow.data == fast.data
+    assert slow.values == fast.values
+    assert slow.keys == fast.keys
+
+
+@pytest.mark.parametrize(
+    ("text", "line", "words"),
+    [
+        ("bodies: {m: 10\nunits: SI\n", 2, "not closed here"),
+        ("directions: [x\nunits: SI\n", 2, "not closed here"),
+        ("bodies:\n  m: 10\n p: 5\n", 3, "does not line up"),
+        ("title: a: b\n", 1, "second `key: value` on this line"),
+    ],
+)
+def test_without_libyaml_a_broken_file_is_told_in_the_same_words(
+    text: str, line: int, words: str, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Breaks if the errors of PyYAML's own parser escape, or reach the user untranslated."""
+    (fast,) = parse(text, "m.yaml").problems
+    monkeypatch.delattr(yaml, "CSafeLoader", raising=False)
+    (slow,) = parse(text, "m.yaml").problems
+    assert (slow.line, fast.line) == (line, line)
+    assert words in slow.message
+    assert words in fast.message
 
 
 def test_on_is_a_key_and_means_the_text_on() -> None:

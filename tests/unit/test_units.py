@@ -125,6 +125,8 @@ def test_a_bare_number_with_a_default_unit_equals_its_text() -> None:
         ("240 N", "mass", ["is a force", "`24.4732 kg`"]),
         ("240 kg", "force", ["is a mass, not a force", "`240 kgf`", "`2353.6 N`"]),
         ("5 oz", "force", ["`5 ozf`"]),
+        ("1e308 kN", "mass", ["is a force, not a mass", "12 kg"]),
+        ("1e308 t", "force", ["is a mass, not a force", "9 kN"]),
         ("100 kg/mm", "stiffness", ["kg is a mass", "`100 kgf/mm`"]),
         ("3 lb/in", "stiffness", ["lb is a mass", "`3 lbf/in`"]),
         (12, "frequency", ["12 Hz", "12 rpm", "12 rad/s"]),
