@@ -15,6 +15,7 @@ if TYPE_CHECKING:
     from mdof.modes.analysis import solve
     from mdof.modes.mode import DampedModes, Mode
     from mdof.modes.regime import Regime
+    from mdof.modes.sweep import DamperSweep, sweep
     from mdof.system import System
 
 __version__ = "0.1.0"
@@ -22,6 +23,7 @@ __version__ = "0.1.0"
 # Public names load their modules on first use, so that `mdof --help` does not pay for numpy.
 _HOMES = {
     "DamagedArchiveError": "mdof.errors",
+    "DamperSweep": "mdof.modes.sweep",
     "DampedModes": "mdof.modes.mode",
     "Finding": "mdof.findings",
     "InputError": "mdof.errors",
@@ -37,11 +39,13 @@ _HOMES = {
     "load": "mdof.description.reading",
     "network": "mdof.description.network",
     "solve": "mdof.modes.analysis",
+    "sweep": "mdof.modes.sweep",
 }
 
 __all__ = [
     "DamagedArchiveError",
     "DampedModes",
+    "DamperSweep",
     "Finding",
     "InputError",
     "MdofError",
@@ -56,6 +60,7 @@ __all__ = [
     "load",
     "network",
     "solve",
+    "sweep",
 ]
 
 

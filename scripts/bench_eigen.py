@@ -103,6 +103,22 @@ def small_row(turns: int) -> bool:
     return report("24 coordinates, one solve", ours / peer, ours, peer, 4.0, at_most=True)
 
 
+def sweep_row() -> bool:
+    """50 values of one damper, branches followed, against 50 eigensolves of the state matrix."""
+    n = 600
+    system, state = machine(n, 1, 0.0, 1.0, seed=6)
+    K, mass = system.K.toarray(), system.M.diagonal()
+    place = int(np.argmax(system.C.diagonal()))
+    held = with_dampers(System.from_matrices(np.diag(mass), np.zeros((n, n)), K), np.array([place]), 1.0)
+    values = system.C.diagonal()[place] * np.geomspace(0.01, 10, 50)
+    swept = mdof.sweep(held, "pot 0", list(values))
+    ours = timed(lambda: mdof.sweep(held, "pot 0", list(values)), 3)
+    peer = 50 * timed(lambda: scipy.linalg.eig(state), 3)
+    met = report("50 values of one damper, n = 600", peer / ours, ours, peer, 30.0)
+    print(f"    {'; '.join(swept.methods)}; lowest confidence {np.nanmin(swept.confidence):.2f}")
+    return met
+
+
 def lattice(side: int, dampers: int, seed: int) -> System:
     """A cubic lattice of masses held at its faces, springs as a sparse matrix, heavy dampers to ground as factors."""
     rng = np.random.default_rng(seed)
@@ -201,7 +217,7 @@ def main() -> int:
     parser = argparse.ArgumentParser(description=(__doc__ or "").splitlines()[0])
     parser.add_argument("--short", action="store_true", help="fewer turns, and no row that takes a minute")
     parser.add_argument(
-        "rows", nargs="*", metavar="ROW", help="small, dense1000, dense2000, growth, lattice, tree; default all"
+        "rows", nargs="*", metavar="ROW", help="small, dense1000, dense2000, sweep, growth, lattice, tree; default all"
     )
     options = parser.parse_args()
     turns = 3 if options.short else 9
@@ -209,11 +225,14 @@ def main() -> int:
         "small": lambda: small_row(30),
         "dense1000": lambda: dense_row(1000, 4, 0.0, 6.0, turns),
         "dense2000": lambda: dense_row(2000, 8, 4.0, 8.0, 3),
+        "sweep": sweep_row,
         "growth": lambda: growth(3),
         "lattice": lambda: lattice_row(30),
         "tree": lambda: tree_row(1_000_000),
     }
-    chosen = options.rows or [name for name in rows if not (options.short and name not in ("small", "dense1000"))]
+    chosen = options.rows or [
+        name for name in rows if not (options.short and name not in ("small", "dense1000", "sweep"))
+    ]
     unknown = set(chosen) - set(rows)
     if unknown:
         parser.error(f"no row {', '.join(sorted(unknown))}; rows are {', '.join(rows)}")

@@ -94,8 +94,12 @@ class _PlainEdges:
     def add(self, name: str, a: int, b: int, code: int, stiffness: float, damping: float, edge: dict[str, Any]) -> None:
         found = self.found
         column = len(found.columns.code)
-        for append, value in zip(self.column, (a, b, code, 0, -1), strict=True):
-            append(value)
+        put_a, put_b, put_code, put_frame, put_point = self.column
+        put_a(a)
+        put_b(b)
+        put_code(code)
+        put_frame(0)
+        put_point(-1)
         spring = -1
         if stiffness:
             loss = edge.get("loss_factor", 0.0)
