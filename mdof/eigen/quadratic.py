@@ -17,8 +17,8 @@ from mdof.eigen.blocks import uncoupled_blocks
 from mdof.eigen.choose import Solved, solve_block
 from mdof.eigen.clusters import average_clusters
 from mdof.eigen.oscillators import oscillator_bounds
-from mdof.eigen.refine import refine
-from mdof.eigen.verify import judge
+from mdof.eigen.refine import refine, settled
+from mdof.eigen.verify import judge, measure
 from mdof.errors import UnverifiedError
 
 if TYPE_CHECKING:
@@ -104,8 +104,11 @@ def solve_complete(problem: NormalisedProblem, method: str = "auto") -> Roots:
         )
     z, left = _normalised(z), None if left is None else _normalised(left)
     which = np.concatenate(block_of)
-    roots, z, left = refine(problem, roots, z, left)
-    judgement = judge(problem, roots, z, left)
+    seen = measure(problem, roots, z, left)
+    if not settled(seen, roots, size):
+        roots, z, left = refine(problem, roots, z, left)
+        seen = measure(problem, roots, z, left)
+    judgement = judge(problem, roots, z, left, seen=seen)
     mates = np.concatenate(partner)
     bounds = oscillator_bounds(problem, roots, judgement.bound, which, blocks)
     computed = roots

@@ -6,14 +6,14 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from mdof.eigen.verify import measure
+from mdof.eigen.verify import Measured, measure
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from mdof.eigen.reduce import NormalisedProblem
 
-__all__ = ["refine"]
+__all__ = ["refine", "settled"]
 
 _EPS = float(np.finfo(np.float64).eps)
 _REFINEMENTS = 6
@@ -55,6 +55,13 @@ def refine(
         if not len(active):
             break
     return values, vectors, left
+
+
+def settled(seen: Measured, values: NDArray[np.complex128], size: int) -> bool:
+    """True where no vector is rough and no step longer than a few roundings."""
+    moving = values != 0
+    long = np.abs(seen.step) > 4 * _EPS * np.abs(values)
+    return not bool(np.any(moving & (long | (seen.backward > 0.5 * size * _EPS))))
 
 
 def _inverse_step(

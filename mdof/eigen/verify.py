@@ -19,7 +19,7 @@ if TYPE_CHECKING:
 
     from mdof.eigen.reduce import NormalisedProblem
 
-__all__ = ["GATE", "Judgement", "check_completeness", "damping_times", "judge", "measure", "real_times"]
+__all__ = ["GATE", "Judgement", "Measured", "check_completeness", "damping_times", "judge", "measure", "real_times"]
 
 _EPS = float(np.finfo(np.float64).eps)
 #: Largest accepted backward error over n times the unit roundoff, in the manner of LAPACK's test programs.
@@ -35,6 +35,17 @@ class Judgement:
     backward: NDArray[np.float64]
     bound: NDArray[np.float64]
     slope: NDArray[np.complex128]
+
+
+@dataclass(frozen=True, kw_only=True, slots=True, eq=False)
+class Measured:
+    """Residuals r = Q(λ)x of shape (m, q) and, per root, yᵀr, yᵀQ'x, backward error and Rayleigh step on λ."""
+
+    rest: NDArray[np.complex128]
+    numerator: NDArray[np.complex128]
+    slope: NDArray[np.complex128]
+    backward: NDArray[np.float64]
+    step: NDArray[np.complex128]
 
 
 def damping_times(
@@ -90,6 +101,7 @@ def judge(
     vectors: NDArray[np.complex128],
     left: NDArray[np.complex128] | None = None,
     reference: NDArray[np.float64] | None = None,
+    seen: Measured | None = None,
 ) -> Judgement:
     """Backward errors and forward bounds of eigenpairs.
 
@@ -98,9 +110,12 @@ def judge(
     values : shape (q,) [1/s]; vectors : shape (m, q)
     left : shape (m, q), optional
         Left vectors, unconjugated transposes; the right ones serve for symmetric problems.
+    seen : Measured, optional
+        What :func:`measure` said of the very same pairs.
     """
     other = vectors if left is None else left
-    seen = measure(problem, values, vectors, left, reference)
+    if seen is None:
+        seen = measure(problem, values, vectors, left, reference)
     size = np.abs(values)
     effort = _effort(problem, size, np.abs(vectors), np.abs(other) if left is not None else None, vectors, other)
     if problem.normwise:
@@ -114,17 +129,6 @@ def judge(
     # The second factor of the forward error is the residual seen by all other modes.
     bound = np.where(np.isfinite(bound), bound, np.inf) + _second_order(values, other, seen.rest, seen.slope)
     return Judgement(backward=seen.backward, bound=bound, slope=seen.slope)
-
-
-@dataclass(frozen=True, kw_only=True, slots=True, eq=False)
-class Measured:
-    """Residuals r = Q(λ)x of shape (m, q) and, per root, yᵀr, yᵀQ'x, backward error and Rayleigh step on λ."""
-
-    rest: NDArray[np.complex128]
-    numerator: NDArray[np.complex128]
-    slope: NDArray[np.complex128]
-    backward: NDArray[np.float64]
-    step: NDArray[np.complex128]
 
 
 def measure(
