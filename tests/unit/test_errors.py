@@ -8,7 +8,16 @@ import pickle
 import pytest
 
 from mdof import errors
-from mdof.errors import DamagedArchiveError, InputError, MdofError, ModelError, Problem, UnverifiedError
+from mdof.errors import (
+    DamagedArchiveError,
+    InputError,
+    MdofError,
+    ModelError,
+    OutputError,
+    Problem,
+    UnverifiedError,
+    UsageError,
+)
 
 
 def test_every_error_is_in_the_tree_drawn_in_the_docstring() -> None:
@@ -53,3 +62,46 @@ def test_errors_cross_into_other_processes_whole() -> None:
     assert again.problems == (Problem(path="a", message="one", line=3),)
     doubt = pickle.loads(pickle.dumps(UnverifiedError("too rough", "look again")))
     assert (doubt.reason, doubt.advice) == ("too rough", "look again")
+
+
+@pytest.mark.parametrize("kind", [ModelError, UsageError, OutputError])
+def test_wrong_input_of_every_kind_ends_with_status_two(kind: type[MdofError]) -> None:
+    assert issubclass(kind, InputError)
+    assert kind.exit_status == 2
+
+
+@pytest.mark.parametrize(
+    ("place", "head"),
+    [
+        ({}, "bodies.fan: wrong"),
+        ({"file": "m.yaml"}, "m.yaml: bodies.fan: wrong"),
+        ({"file": "m.yaml", "line": 3}, "m.yaml:3: bodies.fan: wrong"),
+        ({"line": 3, "column": 5}, "3:5: bodies.fan: wrong"),
+        ({"file": "m.yaml", "path": ""}, "m.yaml: wrong"),
+        ({"expected": "write right"}, "bodies.fan: wrong; write right"),
+    ],
+)
+def test_a_place_is_told_as_far_as_it_is_known(place: dict[str, object], head: str) -> None:
+    assert str(Problem(**{"path": "bodies.fan", "message": "wrong"} | place)) == head
+
+
+@pytest.mark.parametrize("column", [1, 5, 90, 91, 200])
+def test_the_caret_stands_under_the_column_whatever_the_line(column: int) -> None:
+    """Tabs count one, so that the caret keeps its place; a long line is cut in front of it."""
+    line = "".join(chr(ord("a") + index % 26) for index in range(300))
+    line = line[: column - 1] + "#" + line[column:]
+    line = "\t" + line[1:] if column > 1 else line
+    _, shown, caret = str(Problem(path="a", message="m", line=1, column=column, source_line=line)).splitlines()
+    assert shown[caret.index("^")] == "#"
+    assert "\t" not in shown
+    assert len(shown) <= 164
+
+
+def test_an_empty_line_is_not_shown_and_a_line_without_column_has_no_caret() -> None:
+    assert "\n" not in str(Problem(path="a", message="m", line=1, source_line="   "))
+    assert str(Problem(path="a", message="m", line=1, source_line="fan: x")).splitlines()[1:] == ["    fan: x"]
+
+
+def test_a_model_error_tells_every_problem_in_order() -> None:
+    error = ModelError(Problem(path=name, message="wrong") for name in "ba")
+    assert str(error) == "b: wrong\na: wrong"

@@ -54,3 +54,87 @@ def test_the_result_says_which_reference_was_used() -> None:
     modes = mdof.solve(two_rubbers(0.1, 0.2))
     assert "own frequency" in modes.loss_reference
     assert "own frequency" in modes.method
+
+
+def overdamped(eta: float, tie: float) -> mdof.System:
+    """A mass on a strong dashpot tied to one on rubber: two real roots beside an oscillation."""
+    graph = nx.MultiGraph(directions=("x",), damping={})
+    graph.add_node("ground", kind="ground")
+    graph.add_node("a", mass=1.0)
+    graph.add_node("b", mass=1.0)
+    graph.add_edge("a", "ground", key="s", between=("a", "ground"), stiffness=100.0, damping=30.0)
+    graph.add_edge("b", "ground", key="t", between=("b", "ground"), stiffness=400.0, loss_factor=eta)
+    graph.add_edge("b", "a", key="u", between=("b", "a"), stiffness=tie)
+    return mdof.assemble(graph)
+
+
+def assert_roots(system: mdof.System, modes: mdof.DampedModes) -> None:
+    """Every root, the real ones too, solves the determinant with the reference that is stated for its mode."""
+    for mode in modes:
+        C = system.damping_matrix(mode.damping_reference).toarray()
+        for value in mode.eigenvalues:
+            Q = value**2 * system.M.toarray() + value * C + system.K.toarray()
+            assert np.linalg.svd(Q, compute_uv=False)[-1] < 1e-10 * np.linalg.norm(Q)
+
+
+@pytest.mark.parametrize("tie", [20.0, 50.0])
+def test_real_roots_take_the_reference_of_the_nearest_oscillation(tie: float) -> None:
+    system = overdamped(0.4, tie)
+    modes = mdof.solve(system)
+    (turning,) = (mode for mode in modes if mode.damped_frequency)
+    (real,) = (mode for mode in modes if mode.regime == "overdamped")
+    assert real.damping_reference == pytest.approx(turning.natural_frequency, rel=1e-12)
+    assert real.eigenvalues[0] != real.eigenvalues[1]
+    assert_roots(system, modes)
+
+
+def test_without_any_oscillation_the_reference_is_the_middle_of_the_undamped_frequencies() -> None:
+    """Both masses overdamped; ω from 10 to 40 rad/s, in the middle 20."""
+    graph = nx.MultiGraph(directions=("x",), damping={})
+    graph.add_node("ground", kind="ground")
+    for name, stiffness in (("a", 100.0), ("b", 1600.0)):
+        graph.add_node(name, mass=1.0)
+        graph.add_edge(
+            name, "ground", key=name, between=(name, "ground"), stiffness=stiffness, damping=200.0, loss_factor=0.5
+        )
+    system = mdof.assemble(graph)
+    modes = mdof.solve(system)
+    assert [mode.damping_reference for mode in modes] == pytest.approx([20.0, 20.0], rel=1e-12)
+    assert_roots(system, modes)
+
+
+@pytest.mark.parametrize("ratio", [3.0, 20.0, 40.0])
+def test_modes_far_apart_find_their_own_references(ratio: float) -> None:
+    """Two masses on their own rubber, frequencies far apart: η/2 each, and their own reference."""
+    graph = nx.MultiGraph(directions=("x",), damping={})
+    graph.add_node("ground", kind="ground")
+    for name, stiffness, eta in (("a", 4.0, 0.3), ("b", 4.0 * ratio**2, 0.1)):
+        graph.add_node(name, mass=1.0)
+        graph.add_edge(name, "ground", key=name, between=(name, "ground"), stiffness=stiffness, loss_factor=eta)
+    modes = mdof.solve(mdof.assemble(graph))
+    assert modes.damping_ratios == pytest.approx([0.15, 0.05], rel=1e-12)
+    assert modes.damping_references == pytest.approx([2.0, 2.0 * ratio], rel=1e-12)
+
+
+def test_a_loss_factor_just_short_of_two_is_just_short_of_critical() -> None:
+    """ζ = η/2, and |λ| stays sqrt(k/m), to the very border."""
+    graph = nx.MultiGraph(directions=("x",), damping={})
+    graph.add_node("ground", kind="ground")
+    graph.add_node("a", mass=1.0)
+    graph.add_edge("a", "ground", key="s", between=("a", "ground"), stiffness=9.0, loss_factor=1.9)
+    assert mdof.solve(mdof.assemble(graph)).damping_ratios == pytest.approx([0.95], rel=1e-12)
+
+
+def test_close_modes_of_unlike_rubber_do_not_settle_on_one() -> None:
+    """Two nearly equal masses on unlike rubber and a weak tie: two roots, each with its own reference."""
+    graph = nx.MultiGraph(directions=("x",), damping={})
+    graph.add_node("ground", kind="ground")
+    for name, stiffness, eta in (("a", 100.0, 0.05), ("b", 100.5, 0.3)):
+        graph.add_node(name, mass=1.0)
+        graph.add_edge(name, "ground", key=name, between=(name, "ground"), stiffness=stiffness, loss_factor=eta)
+    graph.add_edge("a", "b", key="t", between=("a", "b"), stiffness=0.5)
+    system = mdof.assemble(graph)
+    modes = mdof.solve(system)
+    assert abs(modes.eigenvalues[0, 0] - modes.eigenvalues[1, 0]) > 0.1
+    assert np.sort(modes.damping_ratios) == pytest.approx([0.025, 0.15], abs=2e-3)
+    assert_roots(system, modes)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import copy
+import dataclasses
 import pickle
 
 import numpy as np
@@ -54,3 +55,39 @@ def test_results_copy_and_pickle_with_their_energies(modes: mdof.DampedModes) ->
 def test_the_text_of_a_result_is_short(modes: mdof.DampedModes) -> None:
     assert repr(modes).startswith("DampedModes(3 modes, verified, ")
     assert len(repr(modes[0])) < 2000
+
+
+def test_results_are_frozen(modes: mdof.DampedModes) -> None:
+    for thing, name in ((modes, "method"), (modes[0], "number"), (modes.verification, "status")):
+        with pytest.raises(dataclasses.FrozenInstanceError):
+            setattr(thing, name, "other")
+
+
+def test_a_mode_holds_the_numbers_of_its_own_column(modes: mdof.DampedModes) -> None:
+    for index, mode in enumerate(modes):
+        assert mode.regime is modes.regimes[index]
+        assert mode.decay_rate == modes.decay_rates[index]
+        assert mode.backward_error == modes.backward_errors[index]
+        assert mode.shape.tolist() == modes.shapes[:, index].tolist()
+        assert mode.reduced_shape.tolist() == modes.reduced_shapes[:, index].tolist()
+        assert mode.energy is modes.energies[index]
+        assert mode.frequency_bound == modes.frequency_bounds[index]
+        assert mode.damping_ratio_bound == modes.damping_ratio_bounds[index]
+        assert mode.undamped_frequency == modes.undamped_frequencies[index]
+        assert mode.shortcut_damping_ratio == modes.shortcut_damping_ratios[index]
+        assert mode.damping_reference is None
+
+
+def test_a_mode_knows_its_time_to_two_percent(modes: mdof.DampedModes) -> None:
+    for mode in modes:
+        if mode.damped_frequency:
+            assert mode.time_to_two_percent == pytest.approx(np.log(50) / mode.decay_rate)
+
+
+def test_a_single_root_has_no_partner_in_the_mode_and_nan_in_the_array() -> None:
+    M, C = np.diag([1.0, 0.0]), np.diag([0.1, 2.0])
+    modes = mdof.solve(mdof.System.from_matrices(M, C, np.diag([1.0, 6.0])))
+    (single,) = (mode for mode in modes if mode.regime == "relaxation")
+    assert single.eigenvalues == pytest.approx((-3.0,), rel=1e-14)
+    assert np.isnan(modes.eigenvalues[single.number - 1, 1])
+    assert single.damped_frequency is single.natural_frequency is single.damping_ratio is single.fast_shape is None

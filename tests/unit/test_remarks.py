@@ -148,7 +148,7 @@ def test_twice_the_larger_target_is_the_border_of_a_fit(top: float, outside: boo
 
 def test_low_modes_count_as_outside_the_fit_by_the_mass_term() -> None:
     """α = 0.2: ζ = 0.1/ω, targets 0.01 at 10 and 0.005 at 20 rad/s; at ω = 4 it is 0.025."""
-    system = mdof.System.from_matrices(np.eye(2), np.zeros((2, 2)), np.diag([16.0, 225.0]))
+    system = mdof.System.from_matrices(np.eye(3), np.zeros((3, 3)), np.diag([16.0, 225.0, 900.0]))
     modes = mdof.solve(system.with_values(mass_proportional=0.2, two_ratios=((10.0, 0.01), (20.0, 0.005))))
     assert said(modes, "damping-outside-fit").modes == (1,)
 
@@ -159,3 +159,25 @@ def test_long_lists_of_modes_end_in_dots() -> None:
     assert len(many.modes) == 13
     twelve = said(diagonal([1.0] * 12, [-0.1] * 12, [float(i) for i in range(1, 13)]), "unstable-mode")
     assert "11, 12 grow" in twelve.message
+
+
+def test_leaders_of_a_free_motion_are_named_by_size() -> None:
+    """A free motion (0.5, 1, 0.8, 0.6): the three largest, largest first."""
+    shape = np.array([0.5, 1.0, 0.8, 0.6])
+    rest = np.linalg.svd(shape[None, :])[2][1:]
+    K = rest.T @ np.diag([1.0, 4.0, 9.0]) @ rest
+    modes = mdof.solve(mdof.System.from_matrices(np.eye(4), np.zeros((4, 4)), K, ["a", "b", "c", "d"]))
+    assert "mostly b.x+c.x+d.x)" in said(modes, "free-motion").message
+
+
+def test_roots_without_a_partner_are_named_and_relaxation_is_none_of_them() -> None:
+    """Inman and Andry's example beside a relaxing mount: two roots left over, one that belongs to no oscillator."""
+    M, K = np.diag([1.0, 1.0, 1.0, 0.0]), np.diag([1.0, 16.0, 49.0, 6.0])
+    C = np.diag([2.5, 12.0, 0.1, 2.0])
+    C[0, 1] = C[1, 0] = 1.3
+    modes = mdof.solve(mdof.System.from_matrices(M, C, K))
+    singles = {mode.number for mode in modes if len(mode.eigenvalues) == 1}
+    relaxing = {mode.number for mode in modes if mode.regime == "relaxation"}
+    assert (len(singles), len(relaxing)) == (3, 1)
+    assert set(said(modes, "partner-unresolved").modes) == singles - relaxing
+    assert set(said(modes, "relaxation-roots").modes) == relaxing

@@ -8,7 +8,8 @@ import pytest
 
 import mdof
 from mdof.eigen.reduce import normalise
-from mdof.eigen.springs import free_motions, spring_modes, symmetric_factors
+from mdof.eigen.springs import JACOBI_LIMIT, free_motions, spring_modes, symmetric_factors
+from mdof.errors import UnverifiedError
 
 
 @pytest.mark.parametrize("seed", range(6))
@@ -72,3 +73,97 @@ def test_an_indefinite_matrix_keeps_the_sign_of_every_square() -> None:
     assert sorted(zip(sigma.tolist(), sign.tolist(), strict=True)) == [(2.0, 1.0), (3.0, -1.0)]
     assert (W * (sigma**2 * sign)) @ W.T == pytest.approx(np.diag([4.0, -9.0, 0.0]))
     assert np.abs(N[:, 0]) == pytest.approx([0, 0, 1])
+
+
+def sprung(rows: list[list[float]], stiffness: list[float] | None = None) -> mdof.System:
+    columns = np.array(rows).T
+    count = columns.shape[1]
+    return mdof.System.from_matrices(*(np.eye(len(columns)) * value for value in (1.0, 0.0, 0.0))).with_values(
+        spring_columns=columns,
+        stiffness=np.ones(count) if stiffness is None else np.array(stiffness),
+        loss_factor=np.zeros(count),
+        loss_reference=np.full(count, np.nan),
+        spring_names=tuple(f"s{index}" for index in range(count)),
+        spring_grounded=np.ones(count, dtype=bool),
+    )
+
+
+def bases(rows: list[list[float]], stiffness: list[float] | None = None) -> tuple[np.ndarray, np.ndarray]:
+    free, held = free_motions(sprung(rows, stiffness), np.array(rows), len(rows[0]))
+    both = np.hstack([free, held])
+    assert both.T @ both == pytest.approx(np.eye(len(rows[0])), abs=1e-14)
+    active = np.array(rows)[[index for index in range(len(rows)) if stiffness is None or stiffness[index]]]
+    assert np.abs(active @ free).max(initial=0.0) < 1e-14 * np.abs(active).max(initial=1.0)
+    return free, held
+
+
+@pytest.mark.parametrize(
+    ("rows", "stiffness", "free"),
+    [
+        ([[1.0, -1.0, 0.0], [0.0, 1.0, -1.0]], None, 1),
+        # More springs than coordinates, and still one motion free.
+        ([[1.0, -1.0, 0.0], [0.0, 1.0, -1.0], [1.0, 0.0, -1.0], [2.0, -1.0, -1.0]], None, 1),
+        ([[1.0, -1.0, 0.0], [0.0, 1.0, -1.0], [1.0, 0.0, 0.0]], None, 0),
+        # A spring of no stiffness holds nothing, one of negative stiffness does.
+        ([[1.0, -1.0, 0.0], [0.0, 1.0, -1.0], [1.0, 0.0, 0.0]], [1.0, 1.0, 0.0], 1),
+        ([[1.0, -1.0, 0.0], [0.0, 1.0, -1.0], [1.0, 0.0, 0.0]], [1.0, -1.0, 1.0], 0),
+        # Held by a lever a millionth off the line: badly, but held.
+        ([[1.0, 1.0, 0.0], [1.0, 1.0 + 1e-6, 0.0], [0.0, 0.0, 1.0]], None, 0),
+        ([[1.0, 1.0, 0.0], [1.0, 1.0 + 1e-6, 0.0], [0.0, 0.0, 1.0], [0.0, 0.0, 1.0]], None, 0),
+        # A coordinate that no spring sees.
+        ([[1.0, 0.0, 0.0], [0.0, 0.0, 1e-9]], None, 1),
+        ([[1e-12, 1e-12, 0.0], [1e12, -1e12, 0.0]], None, 1),
+    ],
+)
+def test_free_motions_are_the_null_space_of_the_directions(
+    rows: list[list[float]], stiffness: list[float] | None, free: int
+) -> None:
+    found, held = bases(rows, stiffness)
+    assert (found.shape[1], held.shape[1]) == (free, 3 - free)
+
+
+def test_without_springs_everything_is_free() -> None:
+    free, held = free_motions(sprung([[1.0, -1.0]], [0.0]), np.array([[1.0, -1.0]]), 2)
+    assert (free.tolist(), held.shape) == (np.eye(2).tolist(), (2, 0))
+
+
+@pytest.mark.parametrize("orders", [0.1, 4.0, 15.0])
+def test_the_grading_of_a_large_problem_does_not_cost_it_digits(orders: float) -> None:
+    """Above the limit the symmetric eigensolver serves only where nothing is small beside the rest."""
+    rng = np.random.default_rng(0)
+    n = JACOBI_LIMIT + 5
+    truth = np.geomspace(1.0, 10**orders, n)
+    # Orthonormal columns times a grading, so that the singular values are the grading.
+    q = np.linalg.qr(rng.normal(size=(n + 3, n)))[0]
+    left, sigma, right = spring_modes(q * rng.permutation(truth))
+    assert sigma == pytest.approx(truth, rel=1e-12)
+    assert np.abs(left.T @ left - np.eye(n)).max() < 1e-12
+    assert np.abs(right.T @ right - np.eye(n)).max() < 1e-12
+
+
+def test_singular_values_rise_and_belong_to_their_vectors() -> None:
+    rng = np.random.default_rng(4)
+    factor = rng.normal(size=(9, 6))
+    left, sigma, right = spring_modes(factor)
+    assert np.all(np.diff(sigma) >= 0)
+    assert factor @ right == pytest.approx(left * sigma, rel=1e-12, abs=1e-13)
+    assert [part.shape for part in spring_modes(np.zeros((3, 0)))] == [(3, 0), (0,), (0, 0)]
+
+
+@pytest.mark.parametrize("bad", [np.nan, np.inf, 0.0])
+def test_factors_that_cannot_be_decomposed_are_refused(bad: float) -> None:
+    with pytest.raises(UnverifiedError, match="could not be decomposed"):
+        spring_modes(np.diag([1.0, bad]))
+
+
+def test_what_rounding_leaves_of_a_null_space_is_null() -> None:
+    """A full matrix whose null space is known to rounding only, and a small square that is none."""
+    rng = np.random.default_rng(1)
+    q = np.linalg.qr(rng.normal(size=(5, 5)))[0]
+    squares = np.array([0.0, 1e-12, -3.0, 5.0, 80.0])
+    matrix = (q * squares) @ q.T
+    sigma, sign, W, N = symmetric_factors(0.5 * (matrix + matrix.T), 5)
+    assert N.shape == (5, 1)
+    assert np.abs(q[:, 0] @ N[:, 0]) == pytest.approx(1.0, rel=1e-3)
+    assert np.sort(sigma**2 * sign) == pytest.approx([-3.0, 1e-12, 5.0, 80.0], rel=0.1)
+    assert (W * (sigma**2 * sign)) @ W.T == pytest.approx(matrix, abs=1e-12)
