@@ -37,7 +37,7 @@ def _with_mode_ratios(system: System, ratio: float) -> System:
     With (ω, φ) the undamped modes on the springs of connections without damping or loss factor, mass-normalised, the
     added damping is Σ (Mφ) 2ζω (Mφ)ᵀ: one damper column a mode, kept as a factor like any other.
     """
-    from scipy.linalg import eigh
+    from scipy.linalg import cholesky, eigh, solve_triangular, svd
     from scipy.sparse import csc_array, hstack
 
     own = set(system.damper_names)
@@ -53,11 +53,21 @@ def _with_mode_ratios(system: System, ratio: float) -> System:
         condensed = stiffness[np.ix_(heavy, heavy)] - cross.T @ inner @ cross
     else:
         condensed = stiffness
-    squares, shapes = eigh(condensed, mass[np.ix_(heavy, heavy)])
-    moving = squares > 1e-9 * max(squares.max(initial=0.0), 0.0)
-    added = np.zeros((system.size, int(moving.sum())))
-    added[heavy] = mass[np.ix_(heavy, heavy)] @ shapes[:, moving]
-    values = 2 * ratio * np.sqrt(squares[moving])
+    block = mass[np.ix_(heavy, heavy)]
+    if len(light) or np.any(system.stiffness[without] < 0):
+        squares, shapes = eigh(condensed, block)
+        moving = squares > 1e-12 * max(squares.max(initial=0.0), 0.0)
+        frequencies, momenta = np.sqrt(squares[moving]), block @ shapes[:, moving]
+    else:
+        # From the factors, soft modes keep their digits beside stiff ones.
+        lower = cholesky(block, lower=True)
+        rows = np.sqrt(system.stiffness[without])[:, None] * solve_triangular(lower, columns, lower=True).T
+        _, size, right = svd(rows, full_matrices=False)
+        moving = size > 16 * len(block) * np.finfo(float).eps * size.max(initial=0.0)
+        frequencies, momenta = size[moving], lower @ right[moving].T
+    added = np.zeros((system.size, len(frequencies)))
+    added[heavy] = momenta
+    values = 2 * ratio * frequencies
     count = len(values)
     return system.with_values(
         damper_columns=hstack([system.damper_columns, csc_array(added)], format="csc"),

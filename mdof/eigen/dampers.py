@@ -6,6 +6,8 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
+from mdof.errors import UnverifiedError
+
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
@@ -25,6 +27,11 @@ def damper_rows(
     lossy = system.loss_factor != 0
     stated = lossy & np.isfinite(system.loss_reference)
     floating = lossy & ~stated
+    if np.any(floating & (system.stiffness < 0)):
+        raise UnverifiedError(
+            "a loss factor on a negative stiffness cannot be matched at each mode's own frequency",
+            "state a `reference_frequency` for it",
+        )
     equivalent = np.zeros(len(system.loss_factor))
     equivalent[stated] = system.loss_factor[stated] * system.stiffness[stated] / system.loss_reference[stated]
     rows = [

@@ -25,6 +25,8 @@ __all__ = ["solve_floating"]
 
 _EPS = float(np.finfo(np.float64).eps)
 _STEPS = 60
+#: Loss factors shrunk by this squared leave the frequencies where they are.
+_QUIET = 1e-3
 
 
 def solve_floating(problem: NormalisedProblem) -> tuple[Roots, NDArray[np.float64]]:
@@ -37,30 +39,27 @@ def solve_floating(problem: NormalisedProblem) -> tuple[Roots, NDArray[np.float6
     """
     held = problem.sigma[problem.sigma > 0]
     middle = float(np.sqrt(held.min() * held.max())) if len(held) else 1.0
-    start = solve_complete(_matched(problem, middle))
+    # Without its loss factors every mode has a frequency to start from; a common one would overdamp those far from it.
+    quiet = dataclasses.replace(problem, loss_rows=problem.loss_rows * _QUIET)
+    start = solve_complete(_matched(quiet, middle))
     values, vectors = start.values.copy(), start.vectors.copy()
     turning = np.nonzero(values.imag > 0)[0]
     for index in turning:
-        values[index], vectors[:, index] = _own_reference(problem, values[index], vectors[:, index], middle)
+        values[index], vectors[:, index] = _own_reference(problem, values[index], vectors[:, index])
     if _collided(values[turning], vectors[:, turning]):
-        # A far reference changes which mode is which; start each mode at its own undamped frequency instead.
-        values, vectors = _from_undamped(problem, start, turning)
+        values, vectors = _grown(problem, start, turning)
     reference = np.full(len(values), middle)
     reference[turning] = np.abs(values[turning])
-    for index in np.nonzero((values.imag == 0) & (values != 0))[0]:
+    still = np.nonzero((values.imag == 0) & (values != 0))[0]
+    for index in still:
         if len(turning):
             nearest = turning[np.argmin(np.abs(np.abs(values[turning]) - abs(values[index])))]
             reference[index] = abs(values[nearest])
-            near = solve_complete(_matched(problem, reference[index]))
-            candidates = np.nonzero((near.values.imag == 0) & (near.values != 0))[0]
-            if not len(candidates):
-                raise UnverifiedError(
-                    "a real root disappears when loss factors are matched at the nearest mode",
-                    "state a `reference_frequency`",
-                )
-            like = np.abs(near.vectors[:, candidates].conj().T @ start.vectors[:, index])
-            best = candidates[int(np.argmax(like))]
-            values[index], vectors[:, index] = near.values[best], near.vectors[:, best]
+        values[index], vectors[:, index] = _real_root(problem, start, int(index), reference[index])
+    if _collided(values[still], vectors[:, still]):
+        raise UnverifiedError(
+            "two real roots settle on one with floating loss factors", "state a `reference_frequency`"
+        )
     judgement = judge(problem, values, vectors, None if problem.symmetric else start.left, reference)
     found = dataclasses.replace(
         start,
@@ -88,10 +87,28 @@ def _matched(problem: NormalisedProblem, reference: float) -> NormalisedProblem:
     )
 
 
+def _real_root(
+    problem: NormalisedProblem, start: Roots, index: int, reference: float
+) -> tuple[complex, NDArray[np.complex128]]:
+    """The real root that continues one of the problem without loss factors, slow ones slow and fast ones fast."""
+    near = solve_complete(_matched(problem, reference))
+    same = np.sign(near.slope.real) == np.sign(start.slope[index].real)
+    candidates = np.nonzero((near.values.imag == 0) & (near.values != 0) & same)[0]
+    if not len(candidates):
+        raise UnverifiedError(
+            "a real root disappears when loss factors are matched at the nearest mode", "state a `reference_frequency`"
+        )
+    like = np.abs(near.vectors[:, candidates].conj().T @ start.vectors[:, index])
+    away = np.abs(near.values[candidates] - start.values[index]) / abs(start.values[index])
+    best = candidates[int(np.argmax(like / (1 + away)))]
+    return complex(near.values[best]), near.vectors[:, best]
+
+
 def _own_reference(
-    problem: NormalisedProblem, value: complex, vector: NDArray[np.complex128], reference: float
+    problem: NormalisedProblem, value: complex, vector: NDArray[np.complex128]
 ) -> tuple[complex, NDArray[np.complex128]]:
     """Follow one oscillating root until its own |λ| is its reference, by full solves picked by shape."""
+    begun = abs(value)
     for _ in range(_STEPS):
         roots = solve_complete(_matched(problem, abs(value)))
         turning = np.nonzero(roots.values.imag > 0)[0]
@@ -108,8 +125,7 @@ def _own_reference(
         if change <= 1e-6 * abs(value):
             return _polish(problem, value, vector)
     raise UnverifiedError(
-        f"the mode near {reference / (2 * np.pi):.4g} Hz does not settle with loss factors matched at its own "
-        "frequency",
+        f"the mode near {begun / (2 * np.pi):.4g} Hz does not settle with loss factors matched at its own frequency",
         "state a `reference_frequency` for the loss factors",
     )
 
@@ -147,26 +163,17 @@ def _collided(values: NDArray[np.complex128], vectors: NDArray[np.complex128]) -
     return bool(np.any(same & alike))
 
 
-def _from_undamped(
+def _grown(
     problem: NormalisedProblem, start: Roots, turning: NDArray[np.int64]
 ) -> tuple[NDArray[np.complex128], NDArray[np.complex128]]:
-    """Grow the loss factors from nothing, so that every mode keeps its identity."""
+    """Grow the loss factors from next to nothing, so that every mode keeps its identity."""
     values, vectors = start.values.copy(), start.vectors.copy()
-    quiet = dataclasses.replace(problem, loss_rows=problem.loss_rows * 1e-3)
-    roots = solve_complete(_matched(quiet, float(np.sqrt(problem.sigma.min() * problem.sigma.max()))))
-    following = np.nonzero(roots.values.imag > 0)[0]
-    if len(following) != len(turning):
-        raise UnverifiedError(
-            "loss factors matched at each mode's own frequency change which modes oscillate",
-            "state a `reference_frequency`",
-        )
-    for place, index in zip(turning, following, strict=True):
-        value, vector = complex(roots.values[index]), roots.vectors[:, index]
+    for index in turning:
+        value, vector = complex(values[index]), vectors[:, index]
         for part in np.linspace(0.1, 1.0, 10):
-            value, vector = _own_reference(
-                dataclasses.replace(problem, loss_rows=problem.loss_rows * np.sqrt(part)), value, vector, abs(value)
-            )
-        values[place], vectors[:, place] = value, vector
+            grown = dataclasses.replace(problem, loss_rows=problem.loss_rows * np.sqrt(part))
+            value, vector = _own_reference(grown, value, vector)
+        values[index], vectors[:, index] = value, vector
     if _collided(values[turning], vectors[:, turning]):
         raise UnverifiedError(
             "two modes settle on one root with floating loss factors", "state a `reference_frequency`"

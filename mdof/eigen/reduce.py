@@ -166,7 +166,7 @@ def normalise(system: System) -> NormalisedProblem:
         symmetric
         and bool(np.all(sign > 0))
         and extra_c is None
-        and bool(np.all(signs > 0))
+        and bool(np.all(signs >= 0))
         and system.mass_proportional >= 0
         and system.stiffness_proportional >= 0
         and bool(np.all(system.loss_factor >= 0))

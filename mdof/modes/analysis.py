@@ -78,7 +78,7 @@ def solve(
         raise UsageError(f"count must be a positive whole number, not {count!r}")
     if count is None and near:
         raise UsageError("near goes with count: say how many modes to return")
-    if not np.isfinite(near) or near < 0:
+    if isinstance(near, bool) or not isinstance(near, (int, float, np.number)) or not np.isfinite(near) or near < 0:
         raise UsageError(f"near must be a frequency in rad/s, not {near!r}")
     if method == "partial" or (method == "auto" and count is not None and _large(system, count)):
         from mdof.modes.nearest import solve_nearest

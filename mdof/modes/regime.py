@@ -62,6 +62,9 @@ def classify(
     """
     if slow == 0 or fast == 0:
         other = slow if fast is None or slow != 0 else fast
+        if other.real > 0:
+            # Free, and pushed on by negative drag: its speed grows.
+            return _numbers(Regime.DIVERGENT, None, None, -other.real, None, None)
         return _numbers(Regime.RIGID_BODY, None, None, -other.real + 0.0, None, None)
     relative = max(bound / abs(root) for bound, root in zip(bounds, (slow, fast), strict=True) if root is not None)
     if fast is None:
@@ -78,7 +81,7 @@ def classify(
     ratio = (-slow.real - fast.real) / (2 * frequency)
     spread = 0.5 * sum(bound / abs(root) for bound, root in zip(bounds, (slow, fast), strict=True))
     # dζ = sqrt(ζ² − 1) d(ln sqrt(λf/λs)): bounds on the roots blow up at the double root, their sum and product do not.
-    bound = math.sqrt(max(ratio * ratio - 1, 0.0)) * spread + spread**2 + 2e-14
+    bound = math.sqrt(max(ratio * ratio - 1, 0.0)) * spread + ratio * spread**2 + 2e-14
     critical = abs(ratio - 1) <= max(_CRITICAL, min(bound, 1e-7))
     return _numbers(
         Regime.CRITICALLY_DAMPED if critical else Regime.OVERDAMPED, frequency, ratio, -slow.real, bound, relative

@@ -280,3 +280,8 @@ def test_loss_references_are_told_in_hertz() -> None:
     lone = system.with_values(loss_factor=np.array([0.0, 0.1, 0, 0, 0, 0.0]))
     assert mdof.solve(lone).loss_reference == "as dashpots matched at 2 Hz"
     assert mdof.solve(row(2)).loss_reference == ""
+
+
+def test_near_must_be_a_number() -> None:
+    with pytest.raises(mdof.UsageError, match="near"):
+        mdof.solve(mdof.System.from_matrices([[1.0]], [[0.0]], [[1.0]]), count=1, near="3 Hz")

@@ -138,3 +138,11 @@ def test_a_dashpot_on_a_spring_of_no_stiffness_is_seen_by_its_displacements() ->
     idle = system.with_values(stiffness=np.array([0.0, 4.0]))
     problem = normalise(idle)
     assert problem.damping == pytest.approx(problem.recover.T @ idle.C.toarray() @ problem.recover, abs=1e-14)
+
+
+def test_a_loss_factor_on_a_negative_spring_needs_a_reference() -> None:
+    system = chain([9.0], [0.2]).with_values(
+        stiffness=np.array([-5.0]), loss_factor=np.array([0.1]), loss_reference=np.array([np.nan])
+    )
+    with pytest.raises(mdof.UnverifiedError, match="reference_frequency"):
+        mdof.solve(system)

@@ -138,3 +138,35 @@ def test_close_modes_of_unlike_rubber_do_not_settle_on_one() -> None:
     assert abs(modes.eigenvalues[0, 0] - modes.eigenvalues[1, 0]) > 0.1
     assert np.sort(modes.damping_ratios) == pytest.approx([0.025, 0.15], abs=2e-3)
     assert_roots(system, modes)
+
+
+def beside_an_overdamped_mass(tie: float) -> mdof.System:
+    """An overdamped mass (roots of λ² + 30λ + 100) beside one on a rubber spring without a reference frequency."""
+    graph = nx.MultiGraph(directions=("x",), damping={})
+    graph.add_node("ground", kind="ground")
+    graph.add_node("a", mass=1.0)
+    graph.add_node("b", mass=1.0)
+    graph.add_edge("a", "ground", key="s", between=("a", "ground"), stiffness=100.0, damping=30.0)
+    graph.add_edge("b", "ground", key="t", between=("b", "ground"), stiffness=400.0, loss_factor=0.1)
+    if tie:
+        graph.add_edge("b", "a", key="u", between=("b", "a"), stiffness=tie)
+    return mdof.assemble(graph)
+
+
+@pytest.mark.parametrize("tie", [0.0, 1e-6])
+def test_an_overdamped_mode_beside_a_loss_factor_keeps_both_of_its_roots(tie: float) -> None:
+    modes = mdof.solve(beside_an_overdamped_mass(tie))
+    real = sorted(value.real for mode in modes for value in mode.eigenvalues if value.imag == 0)
+    assert real == pytest.approx([-15 - np.sqrt(125), -15 + np.sqrt(125)], rel=1e-5)
+
+
+@pytest.mark.parametrize(("ratio", "loss"), [(1000.0, 0.1), (50.0, 0.3), (10.0, 0.8)])
+def test_the_reference_of_a_mode_is_found_from_any_distance(ratio: float, loss: float) -> None:
+    graph = nx.MultiGraph(directions=("x",), damping={})
+    graph.add_node("ground", kind="ground")
+    for name, stiffness in (("a", 4.0), ("b", 4.0 * ratio**2)):
+        graph.add_node(name, mass=1.0)
+        graph.add_edge(name, "ground", key=name, between=(name, "ground"), stiffness=stiffness, loss_factor=loss)
+    modes = mdof.solve(mdof.assemble(graph))
+    assert modes.damping_ratios == pytest.approx([loss / 2, loss / 2], rel=1e-12)
+    assert modes.natural_frequencies == pytest.approx([2.0, 2.0 * ratio], rel=1e-12)

@@ -87,3 +87,14 @@ def test_a_free_motion_gets_no_damping_from_the_one_ratio() -> None:
     rigid, elastic = mdof.solve(system)
     assert (rigid.regime, rigid.decay_rate) == ("rigid body", 0.0)
     assert elastic.damping_ratio == pytest.approx(0.04, rel=1e-12)
+
+
+@pytest.mark.parametrize("soft", [1e5, 1e3, 10.0, 1.0])
+def test_one_ratio_for_every_mode_reaches_soft_modes_beside_stiff_springs(soft: float) -> None:
+    graph = nx.MultiGraph(directions=("x",), damping={"mode_ratios": 0.03})
+    graph.add_node("ground", kind="ground")
+    graph.add_node("a", mass=1.0)
+    graph.add_node("b", mass=2.0)
+    graph.add_edge("a", "ground", key="s", between=("a", "ground"), stiffness=soft)
+    graph.add_edge("b", "a", key="t", between=("b", "a"), stiffness=4e9)
+    assert mdof.solve(mdof.assemble(graph)).damping_ratios == pytest.approx([0.03, 0.03], rel=1e-9)

@@ -124,3 +124,12 @@ def test_a_system_is_passive_only_where_nothing_can_feed_it(changes: dict[str, o
 def test_only_symmetric_matrices_go_without_skew_stiffness() -> None:
     assert normalise(CASES["full mass matrix"]).skew_stiffness is None
     assert normalise(CASES["unsymmetric"]).skew_stiffness is not None
+
+
+def test_a_damper_of_zero_leaves_a_system_passive() -> None:
+    graph = nx.MultiGraph(directions=("x",), damping={})
+    graph.add_node("ground", kind="ground")
+    graph.add_node("a", mass=1.0)
+    graph.add_edge("a", "ground", key="s", between=("a", "ground"), stiffness=9.0, damping=1.0)
+    system = mdof.assemble(graph)
+    assert normalise(system.with_values(damping=np.zeros(1))).passive

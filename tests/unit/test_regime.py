@@ -8,6 +8,7 @@ import mpmath as mp
 import numpy as np
 import pytest
 
+import mdof
 from mdof.modes.regime import Regime, classify, time_to_two_percent
 
 EXACT = (1e-15, 1e-15)
@@ -194,3 +195,16 @@ def test_a_critical_mode_given_as_a_complex_pair_or_a_double_root_takes_the_same
 def test_a_single_real_root_falls_by_its_exponential() -> None:
     for regime in (Regime.RELAXATION, Regime.OVERDAMPED):
         assert time_to_two_percent(regime, [-4 + 0j]) == pytest.approx(math.log(50) / 4)
+
+
+def test_a_free_motion_that_grows_is_divergent() -> None:
+    modes = mdof.solve(mdof.System.from_matrices([[1.0]], [[-3.0]], [[0.0]]))
+    assert modes[0].regime == "divergent"
+    assert "divergent-mode" in {finding.code for finding in modes.findings}
+
+
+def test_the_bound_of_very_unlike_real_roots_holds_to_second_order() -> None:
+    numbers = classify(-1e-5 + 0j, -1e5 + 0j, (1e-7, 1e3))
+    assert numbers.damping_ratio_bound is not None
+    slow, fast = 1e-5 - 1e-7, 1e5 + 1e3
+    assert (slow + fast) / (2 * np.sqrt(slow * fast)) - numbers.damping_ratio <= numbers.damping_ratio_bound

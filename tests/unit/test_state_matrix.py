@@ -172,3 +172,30 @@ def test_the_method_counts_the_modes_that_damping_leaves_alone() -> None:
     relaxing = System.from_matrices(np.diag([1.0, 0.0]), np.diag([0.0, 1.0]), [[2.0, -1.0], [-1.0, 2.0]])
     assert "with first-order states" in mdof.solve(relaxing).method
     assert "first-order" not in mdof.solve(System.from_matrices(np.eye(2), tie, np.diag([1.0, 4.0]))).method
+
+
+def test_a_gyroscopic_term_of_no_size_changes_no_regime() -> None:
+    """A relaxation root stays one beside 1e-7 of gyroscopic coupling."""
+    M = np.diag([1.0, 1.5, 0.0])
+    C = np.array([[0.2, 0.0, 0.1], [0.0, 0.3, -0.1], [0.1, -0.1, 1.0]])
+    K = np.array([[9.0, -2.0, -3.0], [-2.0, 6.0, -1.0], [-3.0, -1.0, 8.0]])
+    G = np.zeros((3, 3))
+    G[0, 1], G[1, 0] = 1e-7, -1e-7
+    plain, turning = (mdof.solve(mdof.System.from_matrices(M, part, K)) for part in (C, C + G))
+    assert "relaxation" in plain.regimes
+    assert turning.regimes == plain.regimes
+
+
+def test_left_vectors_are_null_from_the_left_beside_massless_coordinates() -> None:
+    rng = np.random.default_rng(1)
+    A, B, G = rng.normal(size=(3, 4, 4))
+    G[3] = G[:, 3] = 0.0
+    problem = normalise(
+        mdof.System.from_matrices(np.diag([1.0, 2.0, 3.0, 0.0]), A @ A.T + G - G.T, B @ B.T + np.eye(4))
+    )
+    block = energy_balanced(problem, np.arange(4))
+    heavy = np.diag([1.0, 1.0, 1.0, 0.0])
+    assert block.left is not None
+    for value, y in zip(block.values, block.left.T, strict=True):
+        rest = y @ (value**2 * heavy + value * problem.damping + problem.stiffness)
+        assert np.linalg.norm(rest) < 1e-9 * np.linalg.norm(y) * np.linalg.norm(problem.stiffness)
