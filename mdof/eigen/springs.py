@@ -38,7 +38,11 @@ def free_motions(
     scale = np.abs(active).max(axis=0)
     scale[scale == 0] = 1.0
     scaled = active / scale
-    scaled = scaled / np.linalg.norm(scaled, axis=1)[:, None]
+    length = np.linalg.norm(scaled, axis=1)
+    # A spring in series with a far softer one stretches by nothing that can be told from zero.
+    scaled = scaled[length > 0] / length[length > 0][:, None]
+    if not len(scaled):
+        return np.eye(size), np.zeros((size, 0))
     if len(scaled) >= size:
         gram = scaled.T @ scaled
         if np.linalg.eigvalsh(gram)[0] > 1e-9 * len(scaled) / size:

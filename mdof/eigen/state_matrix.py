@@ -90,7 +90,7 @@ def energy_balanced(problem: NormalisedProblem, block: NDArray[np.int64]) -> Blo
     left = None
     if left_states is not None:
         w = (left_states if keep is None else keep @ left_states)[held:, upper]
-        left = np.vstack([w, _light_left(damping, (W * (sigma**2 * sign)) @ W.T, heavy, values, w)])
+        left = _left_vectors(damping, (W * (sigma**2 * sign)) @ W.T, values, w)
     zero = N.shape[1]
     count = len(state) + zero + still.shape[1]
     mates = np.full(len(values), -1)
@@ -107,20 +107,26 @@ def energy_balanced(problem: NormalisedProblem, block: NDArray[np.int64]) -> Blo
     return BlockRoots(values, vectors, left, mates, state=state if whole or problem.modal else None, count=count)
 
 
-def _light_left(
+def _left_vectors(
     damping: NDArray[np.float64],
     stiffness: NDArray[np.float64],
-    heavy: int,
     values: NDArray[np.complex128],
     w: NDArray[np.complex128],
 ) -> NDArray[np.complex128]:
-    """Light part of left vectors whose heavy part is w: the light columns of yᵀQ(λ) vanish, root by root."""
-    light = damping.shape[0] - heavy
-    result = np.zeros((light, len(values)), dtype=np.complex128)
-    for index, value in enumerate(values if light else ()):
+    """Left vectors whose heavy part is w: the light columns of yᵀQ(λ) vanish, root by root."""
+    heavy, size = len(w), len(damping)
+    result = np.zeros((size, len(values)), dtype=np.complex128)
+    result[:heavy] = w
+    for index, value in enumerate(values if size > heavy else ()):
         inner = value * damping[heavy:, heavy:] + stiffness[heavy:, heavy:]
         cross = value * damping[:heavy, heavy:] + stiffness[:heavy, heavy:]
-        result[:, index] = -np.linalg.solve(inner.T, cross.T @ w[:, index])
+        try:
+            result[heavy:, index] = -np.linalg.solve(inner.T, cross.T @ w[:, index])
+        except np.linalg.LinAlgError:
+            # The light coordinates have this very root among themselves.
+            whole = value * damping + stiffness
+            whole[:heavy, :heavy] += value**2 * np.eye(heavy)
+            result[:, index] = np.linalg.svd(whole.T)[2][-1].conj()
     return result
 
 
@@ -160,7 +166,7 @@ def companion(problem: NormalisedProblem) -> BlockRoots:
     check_completeness(state, values)
     upper = values.imag >= 0
     w = left_states[size:, upper]
-    left = np.vstack([w, _light_left(damping, stiffness, heavy, values[upper], w)])
+    left = _left_vectors(damping, stiffness, values[upper], w)
     return BlockRoots(
         values[upper], states[:size, upper], left, np.full(int(upper.sum()), -1), state=state, count=len(state)
     )
