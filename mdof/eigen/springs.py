@@ -68,16 +68,22 @@ def spring_modes(
         if values[0] > 1e-6 * values[-1]:
             sigma = np.sqrt(values)
             return (factor @ vectors) / sigma, sigma, vectors
+    if not np.all(np.isfinite(factor)):
+        raise _undecomposed()
     size, left, right, _, _, info = lapack.dgejsv(factor, joba=2, jobu=0, jobv=0, jobr=1, jobt=0, jobp=1)
     if info != 0 or not np.all(np.isfinite(size)) or np.any(size <= 0):
-        raise UnverifiedError(
-            "the stiffness factors could not be decomposed",
-            "look for stiffness values that differ by over 30 orders of magnitude",
-        )
+        raise _undecomposed()
     # uᵀ A v squares the errors of the vectors and repairs what pivoting by columns alone lets through.
     sigma = np.einsum("ij,ij->j", left, factor @ right)
     order = np.argsort(sigma)
     return left[:, order], sigma[order], right[:, order]
+
+
+def _undecomposed() -> UnverifiedError:
+    return UnverifiedError(
+        "the stiffness factors could not be decomposed",
+        "look for stiffness values that differ by over 30 orders of magnitude",
+    )
 
 
 def symmetric_factors(stiffness: NDArray[np.float64], size: int) -> tuple[NDArray[np.float64], ...]:
