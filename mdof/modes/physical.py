@@ -87,10 +87,15 @@ class PhysicalResidual:
     ) -> NDArray[np.float64]:
         """Backward error of each pair; ``index`` is the root number where a single pair is given."""
         inertia, drag, elastic = self.forces(vectors, slice(None) if index is None else [index])
-        residual = np.linalg.norm(values**2 * inertia + values * drag + elastic, axis=0)
+        # In place: these are the largest arrays of a solve.
+        inertia *= values**2
+        drag *= values
+        inertia += drag
+        inertia += elastic
+        residual = _lengths(inertia)
         size = np.abs(values)
         mass, damping, stiffness = self.norms
-        scale = (size**2 * mass + size * damping + stiffness) * np.linalg.norm(vectors, axis=0)
+        scale = (size**2 * mass + size * damping + stiffness) * _lengths(vectors)
         return np.asarray(np.divide(residual, scale, out=np.zeros(len(values)), where=scale > 0))
 
     def polish(
@@ -164,6 +169,12 @@ def _ready(matrix: Any, small: bool) -> Any:
 
 def _times(matrix: Any, vectors: NDArray[np.complex128]) -> NDArray[np.complex128]:
     return real_times(matrix, vectors) if isinstance(matrix, np.ndarray) else np.asarray(matrix @ vectors)
+
+
+def _lengths(vectors: NDArray[np.complex128]) -> NDArray[np.float64]:
+    """2-norm of every column, without a temporary of magnitudes."""
+    parts = np.ascontiguousarray(vectors).view(np.float64).reshape(len(vectors), -1, 2)
+    return np.asarray(np.sqrt(np.einsum("ijk,ijk->j", parts, parts)))
 
 
 def _longest(matrix: Any) -> float:
