@@ -145,7 +145,9 @@ class PhysicalResidual:
                 quadratic * np.outer(scale, scale), scale * ((2 * value * mass + damping) @ vector)
             )
         except np.linalg.LinAlgError:
-            return value, vector
+            # Singular to the last digit: the root is exact in working precision, and its null vector is the shape.
+            null = scale * np.linalg.svd(quadratic * np.outer(scale, scale))[2][-1].conj()
+            return value, null / np.linalg.norm(null)
         length, overlap = np.linalg.norm(new), complex(np.vdot(vector, new))
         if not np.isfinite(length) or length == 0:
             return value, vector

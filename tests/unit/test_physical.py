@@ -135,3 +135,12 @@ def test_a_large_system_leaves_the_same_residual_through_sparse_products() -> No
     size = sum(abs(value) ** power * np.linalg.norm(part, axis=0).max() for power, part in ((2, M), (1, C), (0, K)))
     wanted = np.linalg.norm((value**2 * M + value * C + K) @ x) / (size * np.linalg.norm(x))
     assert PhysicalResidual(given, None).backward_errors(np.array([value]), x[:, None]) == pytest.approx([wanted])
+
+
+def test_a_root_that_makes_the_matrix_exactly_singular_is_polished_too() -> None:
+    """K − 4M has an exact zero: elimination breaks down there, and the null vector is the shape."""
+    given = mdof.System.from_matrices(np.eye(2), np.zeros((2, 2)), np.diag([4.0, 9.0]))
+    spoilt = np.array([[1.0], [1e-6]], dtype=complex)
+    _, better, errors = PhysicalResidual(given, None).polish(np.array([2j]), spoilt, np.array([1e-12]))
+    assert errors[0] < 1e-15
+    assert abs(better[1, 0]) < 1e-15 * abs(better[0, 0])
