@@ -2,7 +2,7 @@
 
 Damping that leaves an undamped mode alone needs no eigensolver: its two roots are those of a scalar quadratic. The
 others go through the energy-balanced state matrix ``[[0, Σ], [−Σ, −D]]`` (see Veselić, Damped Oscillations of Linear
-Systems, Lecture Notes in Mathematics 2023, 2011), in which masses and springs are scaled alike, with free motions
+Systems, Springer LNM 2023, 2011), in which masses and springs are scaled alike, with free motions
 deflated, and LAPACK's QR algorithm.
 """
 
