@@ -41,7 +41,11 @@ def rotate_equal(problem: NormalisedProblem) -> tuple[NormalisedProblem, NDArray
         return problem, None
     rows = problem.damper_rows @ turn
     rows[np.abs(rows) <= 4 * size * _EPS * (np.abs(problem.damper_rows) @ np.abs(turn))] = 0.0
-    damping = turn.T @ problem.damping @ turn
+    if problem.own_damping is None:
+        damping = turn.T @ problem.damping @ turn
+    else:
+        # From the factors: turning the sum would leave the rounding of a large damper on the small ones.
+        damping = (rows.T * problem.damper_signs) @ rows + np.diag(problem.own_damping)
     return dataclasses.replace(
         problem,
         recover=problem.recover @ turn,

@@ -46,6 +46,8 @@ def solve_block(problem: NormalisedProblem, block: NDArray[np.int64], method: st
     if problem.skew_stiffness is not None:
         return Solved(companion(problem), "state matrix of an unsymmetric system")
     columns = _columns(problem, block)
+    if columns is not None and not columns.shape[1]:
+        columns = None
     suits = columns is not None and len(block) >= _LEAST_SIZE and columns.shape[1] * _LEAST_SHARE <= len(block)
     if columns is not None and method != "dense" and (suits or method == "few dampers"):
         try:

@@ -94,6 +94,8 @@ def few_dampers(squares: Real, own: Real, columns: Real) -> BlockRoots:
         better, better_force = _leading(form, found[faint], np.argmax(np.abs(vectors[:, faint]), axis=0))
         vectors[:, faint] = form.vectors(found[faint], better_force, better)
     vectors = np.hstack([vectors, np.eye(form.size)[:, free]])
+    if not np.all(np.isfinite(vectors)):
+        raise NotResolved("a mode that no damper touches is among those that one should")
     found = np.concatenate([found, np.zeros(len(free))])
     return BlockRoots(found, vectors, None, np.full(len(found), -1), count=2 * form.size)
 

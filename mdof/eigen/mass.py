@@ -71,8 +71,8 @@ def mass_basis(mass: Any) -> tuple[NDArray[np.float64], int, float]:
         if np.min(np.diag(lower)) > 1e-7:
             inner = solve_triangular(lower, np.eye(heavy), lower=True).T
             basis[np.ix_(index[:heavy], np.arange(heavy))] = inner / scale[:, None]
-            # Skeel's condition number of the triangular factor.
-            return basis, heavy, float((np.abs(inner.T) @ np.abs(lower)).sum(axis=1).max())
+            # Skeel's condition number of the triangular factor, squared: M is its product with itself.
+            return basis, heavy, float((np.abs(inner.T) @ np.abs(lower)).sum(axis=1).max()) ** 2
     except np.linalg.LinAlgError:
         pass
     values, vectors = np.linalg.eigh(scaled)
@@ -82,7 +82,12 @@ def mass_basis(mass: Any) -> tuple[NDArray[np.float64], int, float]:
             f"the mass matrix is not positive semidefinite (lowest scaled eigenvalue {values[0]:.3g})",
             "check masses, inertias and products of inertia for signs",
         )
-    massive = values > 10 * tolerance
+    massive = values > 2 * tolerance
+    if np.any(massive & (values < 100 * tolerance)):
+        raise UnverifiedError(
+            "rounding decides whether the mass matrix is singular",
+            "leave massless directions out, or give them a mass that counts",
+        )
     vectors = vectors / scale[:, None]
     order = np.concatenate([np.nonzero(massive)[0], np.nonzero(~massive)[0]])
     count = int(massive.sum())
@@ -90,7 +95,7 @@ def mass_basis(mass: Any) -> tuple[NDArray[np.float64], int, float]:
     block_basis[:, :count] /= np.sqrt(values[massive])
     basis[np.ix_(index[:heavy], np.arange(heavy))] = block_basis
     kept = values[massive]
-    return basis, count, float(np.sqrt(kept.max() / kept.min()) * np.sqrt(heavy)) if count else 1.0
+    return basis, count, float(kept.max() / kept.min() * heavy) if count else 1.0
 
 
 def condense_massless(
@@ -103,16 +108,22 @@ def condense_massless(
     extra_k: NDArray[np.float64] | None,
     extra_c: NDArray[np.float64] | None,
     definite: bool,
+    free: NDArray[np.float64],
 ) -> tuple[Any, ...]:
-    """Condense massless coordinates that no damper moves; the others keep their first-order equation."""
+    """Condense massless coordinates that no damper moves; the others keep their first-order equation.
+
+    ``free`` holds what no spring resists, one motion a column; it is handed on in the coordinates that remain.
+    """
     light = np.arange(heavy, base.shape[1])
     block = dampers[:, light]
     norms = np.linalg.norm(block, axis=1)
     block = block[norms > 0] / norms[norms > 0][:, None] if norms.any() else np.zeros((0, len(light)))
     parts = [block]
     if extra_c is not None and extra_c[np.ix_(light, light)].any():
-        symmetric = extra_c[np.ix_(light, light)]
-        parts.append(symmetric / np.abs(symmetric).max())
+        own = extra_c[np.ix_(light, light)]
+        # Row by row, so that a weak damper counts beside a strong one; the null space stays the same.
+        largest = np.maximum(np.abs(own).max(axis=1), np.finfo(float).tiny)
+        parts.append(own / largest[:, None])
     _, size, right = np.linalg.svd(np.vstack(parts), full_matrices=True)
     rank = int(np.sum(size > 1e-10 * max(size.max(initial=0.0), 1.0)))
     turn = np.eye(base.shape[1])
@@ -123,6 +134,7 @@ def condense_massless(
     kept = np.arange(heavy + rank)
     loose = np.arange(heavy + rank, base.shape[1])
     dampers[:, loose] = 0.0
+    free = (turn.T @ free)[kept]
     if len(loose):
         weight = np.sqrt(np.abs(stiffness))[:, None]
         if definite:
@@ -153,13 +165,14 @@ def condense_massless(
         dampers = dampers[:, kept]
         extra_c = None if extra_c is None else extra_c[np.ix_(kept, kept)]
     if rank:
-        # One damping unit for every light coordinate, in a power of two near the typical rate of the model.
+        # One damping unit for every light coordinate.
         last = np.arange(heavy, heavy + rank)
         own = (dampers[:, last].T * damping) @ dampers[:, last]
         if extra_c is not None:
             own = own + extra_c[np.ix_(last, last)]
         scale = 1.0 / np.sqrt(np.abs(np.diag(own)))
         base[:, last] *= scale
+        free[last] /= scale[:, None]
         springs[:, last] *= scale
         dampers[:, last] *= scale
         if extra_c is not None:
@@ -168,7 +181,7 @@ def condense_massless(
         if extra_k is not None:
             extra_k[last] *= scale[:, None]
             extra_k[:, last] *= scale
-    return base, springs, dampers, extra_k, extra_c, heavy
+    return base, springs, dampers, extra_k, extra_c, heavy, free
 
 
 def _loose() -> UnverifiedError:

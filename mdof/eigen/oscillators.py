@@ -61,7 +61,7 @@ def oscillator_bounds(
     squares = np.where(index < held, np.append(problem.sigma, 0.0)[np.minimum(index, held)] ** 2, 0.0)
     own = np.abs(np.diag(problem.damping))[index]
     size = np.abs(values)
-    defect = (2 * len(problem.recover) + 8) * _EPS * (size**2 + size * own + squares)
+    defect = (2 * len(problem.recover) + 8) * _EPS * problem.amplification * (size**2 + size * own + squares)
     if problem.normwise:
         # The squares came out of a matrix whose rounding is a share of its largest one.
         largest = float((problem.sigma**2).max(initial=0.0))

@@ -26,6 +26,8 @@ if TYPE_CHECKING:
 
     from mdof.eigen.reduce import NormalisedProblem
 
+_EPS = float(np.finfo(np.float64).eps)
+
 __all__ = ["Roots", "solve_complete"]
 
 
@@ -106,7 +108,12 @@ def solve_complete(problem: NormalisedProblem, method: str = "auto") -> Roots:
     which = np.concatenate(block_of)
     seen = measure(problem, roots, z, left)
     if not settled(seen, roots, size):
-        roots, z, left = refine(problem, roots, z, left)
+        before = seen.backward
+        new, new_z, new_left = refine(problem, roots, z, left)
+        # Near a double root a step moves the root away from its vector; such pairs stay as they came.
+        worse = measure(problem, new, new_z, new_left).backward > np.maximum(before, size * _EPS)
+        roots, z = np.where(worse, roots, new), np.where(worse, z, new_z)
+        left = None if left is None or new_left is None else np.where(worse, left, new_left)
         seen = measure(problem, roots, z, left)
     judgement = judge(problem, roots, z, left, seen=seen)
     mates = np.concatenate(partner)

@@ -13,7 +13,7 @@ import numpy as np
 
 from mdof.eigen.dampers import damper_rows, damper_rows_in_modes, factored_damping
 from mdof.eigen.mass import condense_massless, mass_basis, turned
-from mdof.eigen.springs import JACOBI_LIMIT, free_motions, spring_modes, symmetric_factors
+from mdof.eigen.springs import by_eigensolver, free_motions, split, spring_modes, symmetric_factors
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -112,7 +112,10 @@ def normalise(system: System) -> NormalisedProblem:
     definite = extra_k is None and bool(np.all(system.stiffness >= 0))
     if light_count:
         own = len(dampers)
-        base, springs, dampers, extra_k, extra_c, heavy = condense_massless(
+        # From the springs as they are: condensed rows of stiff springs are differences whose rounding looks like more.
+        none = np.zeros((base.shape[1], 0))
+        free = free_motions(system, springs, base.shape[1])[0] if definite else none
+        base, springs, dampers, extra_k, extra_c, heavy, free = condense_massless(
             base,
             heavy,
             springs,
@@ -122,13 +125,14 @@ def normalise(system: System) -> NormalisedProblem:
             extra_k,
             extra_c,
             definite,
+            free,
         )
         dampers, general = dampers[:own], dampers[own:]
         spring_rows = root_k[:, None] * springs
     size = base.shape[1]
     skew = None
     if definite:
-        N, Z = free_motions(system, springs, size)
+        N, Z = split(free) if light_count else free_motions(system, springs, size)
         left, sigma, W = spring_modes(spring_rows @ Z)
         W, sign = Z @ W, np.ones(len(sigma))
     else:
@@ -188,7 +192,7 @@ def normalise(system: System) -> NormalisedProblem:
         spring_rows=None if definite else spring_rows,
         skew_stiffness=skew,
         amplification=amplification,
-        normwise=not definite or len(sigma) > JACOBI_LIMIT,
+        normwise=not definite or by_eigensolver(sigma),
         modal=modal,
         symmetric=symmetric,
         passive=passive,
@@ -199,6 +203,6 @@ def normalise(system: System) -> NormalisedProblem:
 
 def _own_damping(system: System, sigma: NDArray[np.float64], size: int) -> NDArray[np.float64]:
     """Damping that proportional terms give each undamped mode, shape (m,) [1/s]."""
-    result = np.full(size, system.mass_proportional)
+    result = np.full(size, float(system.mass_proportional))
     result[: len(sigma)] += system.stiffness_proportional * sigma**2
     return result

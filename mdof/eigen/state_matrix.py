@@ -59,7 +59,7 @@ def energy_balanced(problem: NormalisedProblem, block: NDArray[np.int64]) -> Blo
         state[:held, held:] += force[heavy:].T @ from_v
         state[held:, :held] -= Dhl @ from_q
         state[held:, held:] -= Dhl @ from_v
-    moving, still = _split_free(N, damping, heavy, problem.symmetric)
+    moving, still = _split_free(problem, block, N, damping, heavy)
     keep = None
     if still.shape[1]:
         q, _ = np.linalg.qr(still[:heavy], mode="complete")
@@ -131,15 +131,34 @@ def _left_vectors(
 
 
 def _split_free(
-    N: NDArray[np.float64], damping: NDArray[np.float64], heavy: int, symmetric: bool
+    problem: NormalisedProblem,
+    block: NDArray[np.int64],
+    N: NDArray[np.float64],
+    damping: NDArray[np.float64],
+    heavy: int,
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
     """Free motions that a damper moves, and those that nothing resists at all."""
     if not N.shape[1]:
         return N, N
-    if not symmetric:
+    if not problem.symmetric:
         return N, N[:, :0]
-    N = N @ np.linalg.eigh(N.T @ damping @ N)[1]
-    touched = np.linalg.norm(damping @ N, axis=0) > 16 * len(N) * _EPS * np.linalg.norm(damping)
+    if problem.own_damping is None:
+        N = N @ np.linalg.eigh(N.T @ damping @ N)[1]
+        pull, noise = np.linalg.norm(damping @ N, axis=0), float(np.linalg.norm(damping))
+    else:
+        # By the factors, a weak drag shows beside strong dampers that a free motion does not move.
+        whole = problem.damper_rows[:, block]
+        rows = whole @ N
+        # What a damper within the machine makes of a free motion is its rounding.
+        rows[np.abs(rows) <= 64 * len(N) * _EPS * np.linalg.norm(whole, axis=1)[:, None]] = 0.0
+        own = N.T @ (problem.own_damping[block][:, None] * N)
+        turn = np.linalg.eigh((rows.T * problem.damper_signs) @ rows + own)[1]
+        N, rows = N @ turn, rows @ turn
+        pull, noise = (
+            np.sqrt(np.sum(rows**2, axis=0) + np.abs(np.diag(turn.T @ own @ turn))),
+            float(np.linalg.norm(rows)),
+        )
+    touched = pull > 16 * len(N) * _EPS * noise
     still = ~touched & (np.linalg.norm(N[:heavy], axis=0) > 1e-8)
     return N[:, ~still], N[:, still]
 
