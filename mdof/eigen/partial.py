@@ -60,12 +60,10 @@ class Pencil:
 
 @dataclass(frozen=True, kw_only=True, slots=True, eq=False)
 class Nearest:
-    """Roots of upper half-plane and real axis nearest to a frequency, with unit vectors and relative residuals."""
+    """Roots of upper half-plane and real axis nearest to a frequency, with unit vectors."""
 
     values: Complex
     vectors: Complex
-    backward: Real
-    below: int | None
     method: str
 
 
@@ -117,8 +115,6 @@ def nearest_roots(
             return Nearest(
                 values=values,
                 vectors=vectors,
-                backward=backward,
-                below=factor.below,
                 method=f"some modes, projected on {basis.shape[1]} vectors "
                 f"({'undamped modes and what the dampers push' if heavy < _LIGHT else 'of Arnoldi in state space'}), "
                 f"{factor.name}",
@@ -141,12 +137,11 @@ def nearest_roots(
 @dataclass(frozen=True, slots=True, eq=False)
 class _Factor:
     solve: Callable[[Real], Real]
-    below: int | None
     name: str
 
 
 def _factor(pencil: Pencil, near: float) -> _Factor:
-    """K − ω²M factored for many right-hand sides, with the number of undamped modes below where it can be told."""
+    """K − ω²M factored for many right-hand sides."""
     from scipy.sparse.linalg import splu
 
     matrix = (pencil.stiffness - near**2 * pencil.mass).tocsc()
@@ -157,10 +152,7 @@ def _factor(pencil: Pencil, near: float) -> _Factor:
             "the stiffness matrix cannot be factored at this frequency",
             "the model moves freely, or `near` meets an undamped mode exactly; hold it, or move `near` a little",
         ) from None
-    below = None
-    if np.array_equal(lower.perm_r, lower.perm_c):
-        below = int(np.sum(lower.U.diagonal() < 0))
-    return _Factor(lower.solve, below, "one SuperLU factorisation with a symmetric ordering")
+    return _Factor(lower.solve, "one SuperLU factorisation with a symmetric ordering")
 
 
 def _heaviness(pencil: Pencil, factor: _Factor, near: float) -> float:

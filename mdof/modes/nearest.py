@@ -76,7 +76,7 @@ def solve_nearest(
     pairs = [pairs[index] for index in chosen]
     numbers = [_numbers(values, bounds, pair) for pair in pairs]
     slow = np.array([pair[0] for pair in pairs])
-    backward = np.maximum(physical.backward_errors(values, vectors), 0.0)
+    backward = physical.backward_errors(values, vectors)
     verification = _verified(system, backward[slow], numbers, pairs)
     shapes, reduced = scaled_shapes(system, vectors[:, slow])
     fast_shapes = np.full_like(shapes, np.nan)

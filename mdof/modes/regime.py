@@ -65,7 +65,9 @@ def classify(
         if other.real > 0:
             # Free, and pushed on by negative drag: its speed grows.
             return _numbers(Regime.DIVERGENT, None, None, -other.real, None, None)
-        return _numbers(Regime.RIGID_BODY, None, None, -other.real + 0.0, None, None)
+        # What is known of the rate counts as the bound of the mode; a motion that nothing slows has none.
+        known = None if other == 0 else bounds[0 if other is slow else 1] / abs(other)
+        return _numbers(Regime.RIGID_BODY, None, None, -other.real + 0.0, None, known)
     relative = max(bound / abs(root) for bound, root in zip(bounds, (slow, fast), strict=True) if root is not None)
     if fast is None:
         rate = -slow.real
