@@ -275,11 +275,81 @@ class System:
             recovery=eye_array(n, format="csc"),
         )
 
+    @classmethod
+    def from_factors(
+        cls,
+        M: Any,
+        spring_columns: Any,
+        stiffness: ArrayLike,
+        damper_columns: Any = None,
+        damping: ArrayLike = (),
+        labels: Sequence[str] | None = None,
+    ) -> System:
+        """A system from directions and values, ``K = B diag(k) Bᵀ`` and ``C = D diag(c) Dᵀ``.
+
+        Stiff springs beside soft ones lose nothing this way; summed into a matrix they would.
+
+        Parameters
+        ----------
+        M : array or sparse array, shape (n, n) [SI]
+            Symmetric positive semidefinite.
+        spring_columns, damper_columns : array or sparse array, shapes (n, n_springs) and (n, n_dampers)
+        stiffness, damping : array, shapes (n_springs,) and (n_dampers,)
+        labels : sequence of str, optional
+            As in :meth:`from_matrices`.
+
+        Raises
+        ------
+        UsageError
+            If shapes differ, entries are not real and finite, or M is not symmetric.
+        """
+        from scipy.sparse import csc_array
+
+        mass = _sparse(M, "M")
+        n = mass.shape[0]
+        empty = csc_array((n, n))
+        springs = _sparse(spring_columns, "spring_columns")
+        dampers = csc_array((n, 0)) if damper_columns is None else _sparse(damper_columns, "damper_columns")
+        k, c = np.atleast_1d(np.asarray(stiffness, float)), np.atleast_1d(np.asarray(damping, float))
+        for columns, values, name, of in (
+            (springs, k, "spring_columns", "stiffness"),
+            (dampers, c, "damper_columns", "damping"),
+        ):
+            if columns.shape != (n, len(values)):
+                raise UsageError(
+                    f"{name} must have shape ({n}, {len(values)}) to go with M and {of}, not {columns.shape}"
+                )
+        known = {content: index for index, content in enumerate(_content(springs))}
+        parallel = [known.get(content, -1) for content in _content(dampers)]
+        return cls.from_matrices(mass, empty, empty, labels).with_values(
+            spring_columns=springs,
+            stiffness=k,
+            loss_factor=np.zeros(len(k)),
+            loss_reference=np.full(len(k), np.nan),
+            spring_names=tuple(f"spring{index + 1}" for index in range(len(k))),
+            spring_grounded=np.diff(springs.indptr) == 1,
+            damper_columns=dampers,
+            damping=c,
+            damper_names=tuple(f"damper{index + 1}" for index in range(len(c))),
+            damper_spring=np.array(parallel, dtype=np.int64),
+            damper_grounded=np.diff(dampers.indptr) == 1,
+        )
+
     def __repr__(self) -> str:
         return (
             f"System({self.degrees_of_freedom} degrees of freedom, {len(self.stiffness)} spring columns, "
             f"{len(self.damping)} damper columns, {self.first_order_states} first-order states)"
         )
+
+
+def _content(columns: Any) -> list[tuple[bytes, bytes]]:
+    """Rows and entries of every column, to tell equal ones."""
+    columns = columns.sorted_indices()
+    cuts = columns.indptr
+    return [
+        (columns.indices[i:j].astype(np.int64).tobytes(), columns.data[i:j].tobytes())
+        for i, j in zip(cuts[:-1], cuts[1:], strict=True)
+    ]
 
 
 def _weighted_gram(columns: Any, weights: NDArray[np.float64]) -> Any:

@@ -17,24 +17,9 @@ def factored(
 ) -> System:
     """A system from directions and values."""
     n = len(masses)
-    empty = np.zeros((n, n))
     columns = np.array([b for b, _ in springs], dtype=float).reshape(-1, n).T
     pushes = np.array([b for b, _ in dampers], dtype=float).reshape(-1, n).T
-    return System.from_matrices(np.diag(masses), empty, empty).with_values(
-        spring_columns=csc_array(columns),
-        stiffness=np.array([k for _, k in springs]),
-        loss_factor=np.zeros(len(springs)),
-        loss_reference=np.full(len(springs), np.nan),
-        spring_names=tuple(f"s{index}" for index in range(len(springs))),
-        spring_grounded=np.count_nonzero(columns, axis=0) == 1,
-        damper_columns=csc_array(pushes),
-        damping=np.array([c for _, c in dampers]),
-        damper_names=tuple(f"d{index}" for index in range(len(dampers))),
-        damper_spring=np.full(len(dampers), -1),
-        damper_grounded=np.count_nonzero(pushes, axis=0) == 1,
-        extra_stiffness=None,
-        extra_damping=None,
-    )
+    return System.from_factors(np.diag(masses), columns, [k for _, k in springs], pushes, [c for _, c in dampers])
 
 
 @pytest.mark.parametrize("stiff", [330.0, 1e4, 1e6, 1e9])

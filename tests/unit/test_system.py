@@ -180,3 +180,25 @@ def test_first_order_states_are_no_degrees_of_freedom() -> None:
     system = System.from_matrices(np.diag([1.0, 0.0]), np.diag([0.0, 1.0]), EYE).with_values(first_order_states=1)
     assert (system.size, system.degrees_of_freedom) == (2, 1)
     assert repr(system).startswith("System(1 degrees of freedom, 0 spring columns")
+
+
+def test_a_system_from_directions_and_values_has_their_matrices() -> None:
+    system = System.from_factors(np.diag([1.0, 2.0]), [[1, 1], [-1, 0]], [3.0, 5.0], [[0, 1], [1, -1]], [7.0, 11.0])
+    assert system.K.toarray().tolist() == [[8, -3], [-3, 3]]
+    assert system.C.toarray().tolist() == [[11, -11], [-11, 18]]
+    assert system.damper_spring.tolist() == [-1, 0]
+    assert system.spring_grounded.tolist() == [False, True]
+    assert System.from_factors([[1.0]], [[1.0]], [4.0]).C.toarray().tolist() == [[0]]
+
+
+@pytest.mark.parametrize(
+    ("columns", "stiffness", "words"),
+    [
+        ([[1.0], [0.0]], [1.0, 2.0], "spring_columns must have shape (2, 2) to go with M and stiffness, not (2, 1)"),
+        ([[1.0]], [1.0], "spring_columns must have shape (2, 1)"),
+        ([[1.0], [0.0]], [np.nan], "stiffness holds NaN"),
+    ],
+)
+def test_factors_that_do_not_fit_are_refused(columns: object, stiffness: list[float], words: str) -> None:
+    with pytest.raises(UsageError, match=re.escape(words)):
+        System.from_factors(np.eye(2), columns, stiffness)
