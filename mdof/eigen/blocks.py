@@ -73,12 +73,18 @@ def uncoupled_blocks(problem: NormalisedProblem) -> list[NDArray[np.int64]]:
 
 
 def _equal(squares: NDArray[np.float64], size: int) -> list[NDArray[np.int64]]:
-    """Groups of two or more equal ω², within rounding."""
+    """Groups of two or more equal ω², within rounding; what is neglected between them is covered by the bounds."""
     order = np.argsort(squares)
-    ranked = squares[order]
-    near = np.abs(np.diff(ranked)) <= 8 * size * _EPS * np.maximum(np.abs(ranked[1:]), np.abs(ranked[:-1]))
-    groups = np.split(order, np.nonzero(~near)[0] + 1)
-    return [group for group in groups if len(group) > 1]
+    groups: list[list[int]] = []
+    first = np.nan
+    for index in order:
+        value = squares[index]
+        if abs(value - first) <= 2 * size * _EPS * max(abs(value), abs(first)):
+            groups[-1].append(int(index))
+        else:
+            groups.append([int(index)])
+            first = value
+    return [np.array(group) for group in groups if len(group) > 1]
 
 
 def connected(coupled: NDArray[np.bool_]) -> list[NDArray[np.int64]]:

@@ -22,18 +22,22 @@ def average_clusters(
     block: NDArray[np.int64],
     partner: NDArray[np.int64],
     states: list[NDArray[np.float64] | None],
+    amplification: float = 1.0,
 ) -> tuple[NDArray[np.complex128], NDArray[np.float64], NDArray[np.bool_]]:
     """Replace roots that cannot be told apart by their mean, whose own bound comes from the spectral projector.
 
     A nearly defective eigenvalue moves by the square root of rounding; the mean of the colliding roots does not.
     ``partner`` is filled in place for real roots that collide.
     """
+    from scipy.linalg import schur
+
     values, bounds = values.copy(), bounds.copy()
     clustered = np.zeros(len(values), dtype=bool)
     for number, state in enumerate(states):
         own = np.nonzero((block == number) & (values != 0))[0]
         if state is None or not len(own):
             continue
+        triangle: NDArray[np.float64] | None = None
         reach = 4 * bounds[own]
         reach = np.minimum(reach, 1e-6 * np.abs(values[own]))
         own_values = values[own]
@@ -52,10 +56,12 @@ def average_clusters(
                 continue
             weight = np.where(values[members].imag > 0, 2.0, 1.0) if on_axis else np.ones(len(members))
             mean = complex(np.sum(weight * (values[members].real if on_axis else values[members])) / weight.sum())
-            bound = _mean_bound(state, values[members], on_axis)
+            if triangle is None:
+                triangle, basis = schur(state, output="real")
+            known, split = _uncertainty(triangle, basis, values[members], on_axis, amplification)
             spread = float(np.max(np.abs(values[members] - mean)))
             values[members] = mean
-            bounds[members] = bound + spread
+            bounds[members] = known + spread + split
             clustered[members] = True
             if on_axis:
                 singles = [int(index) for index, size in zip(members, weight, strict=True) if size == 1.0]
@@ -67,11 +73,21 @@ def average_clusters(
     return values, bounds, clustered
 
 
-def _mean_bound(state: NDArray[np.float64], members: NDArray[np.complex128], on_axis: bool) -> float:
-    """Bound on the mean of a cluster: rounding of the state matrix over LAPACK's reciprocal condition number s."""
-    from scipy.linalg import lapack, schur
+def _uncertainty(
+    triangle: NDArray[np.float64],
+    basis: NDArray[np.float64],
+    members: NDArray[np.complex128],
+    on_axis: bool,
+    amplification: float,
+) -> tuple[float, float]:
+    """How well the mean of a cluster is known, and how much farther from it than computed a member may lie.
 
-    triangle, basis = schur(state, output="real")
+    The mean is as good as rounding of the state matrix over LAPACK's reciprocal condition number of the spectral
+    projector. A member's distance to it is the k-th root of numbers of the size of that rounding times the coupling
+    within the cluster: the departure of its k by k block from a multiple of the identity.
+    """
+    from scipy.linalg import lapack
+
     centre = members.mean() if not on_axis else members.real.mean()
     radius = 4 * float(np.max(np.abs(members - centre))) + 1e-12 * abs(centre)
     real, imaginary = np.diag(triangle), np.zeros(len(triangle))
@@ -80,12 +96,36 @@ def _mean_bound(state: NDArray[np.float64], members: NDArray[np.complex128], on_
     imaginary[below] = block
     imaginary[below + 1] = block
     chosen = np.abs(real + 1j * imaginary - complex(centre.real, abs(centre.imag))) <= radius
-    norm = float(np.linalg.norm(state))
-    if not chosen.any() or chosen.all():
-        condition = 1.0
-    else:
+    norm = float(np.linalg.norm(triangle))
+    condition = 1.0
+    if chosen.any() and not chosen.all():
         result = lapack.dtrsen(
-            chosen.astype(np.int32), triangle, basis, job=b"E", lwork=len(state) ** 2, liwork=len(state) ** 2
+            chosen.astype(np.int32),
+            triangle,
+            basis,
+            job=b"E",
+            lwork=len(triangle) ** 2,
+            liwork=len(triangle) ** 2,
         )
-        condition = float(result[5]) if result[7] == 0 and result[5] > 0 else 1e-8
-    return 8 * len(state) * _EPS * norm / condition
+        # A cluster that cannot be parted from the rest is not known at all.
+        condition = float(result[5]) if result[7] == 0 and result[5] > 0 else _EPS
+        triangle = result[0]
+    known = 8 * len(triangle) * _EPS * amplification * norm / condition
+    count = int(chosen.sum()) if chosen.any() else len(triangle)
+    own = triangle[:count, :count]
+    # A complex cluster comes with its mirror image: each of the two has half of the members.
+    power = max(count if on_axis else count // 2, 1)
+    coupling = float(np.linalg.norm(own - centre.real * np.eye(count)))
+    if not on_axis:
+        coupling = _coupling(own, complex(centre))
+    return known, float((known * max(coupling, known) ** (power - 1)) ** (1 / power)) if power > 1 else 0.0
+
+
+def _coupling(own: NDArray[np.float64], centre: complex) -> float:
+    """Norm of what a block with the double-sided cluster centre, centre* adds to the two multiples of the identity."""
+    from scipy.linalg import schur
+
+    # In complex Schur form, eigenvalues of the upper half-plane first, the leading half is the cluster itself.
+    upper, _, count = schur(own.astype(np.complex128), output="complex", sort=lambda value: value.imag > 0)
+    part = upper[:count, :count]
+    return float(np.linalg.norm(part - centre * np.eye(count)))

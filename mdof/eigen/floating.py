@@ -8,6 +8,7 @@ then the reference renewed.
 from __future__ import annotations
 
 import dataclasses
+from collections.abc import Callable
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -29,8 +30,17 @@ _STEPS = 60
 _QUIET = 1e-3
 
 
-def solve_floating(problem: NormalisedProblem) -> tuple[Roots, NDArray[np.float64]]:
+def solve_floating(
+    problem: NormalisedProblem, pairs: Callable[[Roots], list[tuple[int, int]]]
+) -> tuple[Roots, NDArray[np.float64]]:
     """All roots with floating loss factors, and the reference used for each root [rad/s].
+
+    Parameters
+    ----------
+    problem : NormalisedProblem
+    pairs : callable
+        Indices (slow, fast) of the roots of each mode, so that both roots of an overdamped one share the reference
+        sqrt(λs λf).
 
     Raises
     ------
@@ -51,11 +61,17 @@ def solve_floating(problem: NormalisedProblem) -> tuple[Roots, NDArray[np.float6
     reference = np.full(len(values), middle)
     reference[turning] = np.abs(values[turning])
     still = np.nonzero((values.imag == 0) & (values != 0))[0]
-    for index in still:
+    single = set(still.tolist())
+    for pair in pairs(start) if len(still) else ():
+        if pair[0] in single and pair[1] in single and pair[0] != pair[1]:
+            reference[list(pair)] = _settle_pair(problem, start, pair, values, vectors)
+            single -= set(pair)
+    for alone in sorted(single):
         if len(turning):
-            nearest = turning[np.argmin(np.abs(np.abs(values[turning]) - abs(values[index])))]
-            reference[index] = abs(values[nearest])
-        values[index], vectors[:, index] = _real_root(problem, start, int(index), reference[index])
+            nearest = turning[np.argmin(np.abs(np.abs(values[turning]) - abs(values[alone])))]
+            reference[alone] = abs(values[nearest])
+        near = solve_complete(_matched(problem, reference[alone]))
+        values[alone], vectors[:, alone] = _real_root(near, start, alone)
     if _collided(values[still], vectors[:, still]):
         raise UnverifiedError(
             "two real roots settle on one with floating loss factors", "state a `reference_frequency`"
@@ -87,17 +103,37 @@ def _matched(problem: NormalisedProblem, reference: float) -> NormalisedProblem:
     )
 
 
-def _real_root(
-    problem: NormalisedProblem, start: Roots, index: int, reference: float
-) -> tuple[complex, NDArray[np.complex128]]:
+def _settle_pair(
+    problem: NormalisedProblem,
+    start: Roots,
+    pair: tuple[int, int],
+    values: NDArray[np.complex128],
+    vectors: NDArray[np.complex128],
+) -> float:
+    """Both roots of an overdamped mode at the reference sqrt(λs λf), in place; that reference [rad/s]."""
+    own = list(pair)
+    reference = float(np.sqrt(np.prod(np.abs(start.values[own]))))
+    for _ in range(_STEPS):
+        near = solve_complete(_matched(problem, reference))
+        for index in own:
+            values[index], vectors[:, index] = _real_root(near, start, index)
+        renewed = float(np.sqrt(np.prod(np.abs(values[own]))))
+        if abs(renewed - reference) <= 8 * _EPS * reference:
+            return reference
+        reference = renewed
+    raise UnverifiedError(
+        f"the overdamped mode near {reference / (2 * np.pi):.4g} Hz does not settle with loss factors matched at its "
+        "own frequency",
+        "state a `reference_frequency` for the loss factors",
+    )
+
+
+def _real_root(near: Roots, start: Roots, index: int) -> tuple[complex, NDArray[np.complex128]]:
     """The real root that continues one of the problem without loss factors, slow ones slow and fast ones fast."""
-    near = solve_complete(_matched(problem, reference))
     same = np.sign(near.slope.real) == np.sign(start.slope[index].real)
     candidates = np.nonzero((near.values.imag == 0) & (near.values != 0) & same)[0]
     if not len(candidates):
-        raise UnverifiedError(
-            "a real root disappears when loss factors are matched at the nearest mode", "state a `reference_frequency`"
-        )
+        raise UnverifiedError("a real root disappears when loss factors are added", "state a `reference_frequency`")
     like = np.abs(near.vectors[:, candidates].conj().T @ start.vectors[:, index])
     away = np.abs(near.values[candidates] - start.values[index]) / abs(start.values[index])
     best = candidates[int(np.argmax(like / (1 + away)))]

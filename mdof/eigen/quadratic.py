@@ -17,7 +17,7 @@ from mdof.eigen.blocks import uncoupled_blocks
 from mdof.eigen.choose import Solved, solve_block
 from mdof.eigen.clusters import average_clusters
 from mdof.eigen.oscillators import oscillator_bounds
-from mdof.eigen.refine import refine, settled
+from mdof.eigen.refine import inverse_step, refine, settled
 from mdof.eigen.verify import judge, measure
 from mdof.errors import UnverifiedError
 
@@ -110,16 +110,18 @@ def solve_complete(problem: NormalisedProblem, method: str = "auto") -> Roots:
     if not settled(seen, roots, size):
         before = seen.backward
         new, new_z, new_left = refine(problem, roots, z, left)
-        # Near a double root a step moves the root away from its vector; such pairs stay as they came.
+        # Near a double root a step moves the root away from its vector; such roots stay as they came.
         worse = measure(problem, new, new_z, new_left).backward > np.maximum(before, size * _EPS)
         roots, z = np.where(worse, roots, new), np.where(worse, z, new_z)
         left = None if left is None or new_left is None else np.where(worse, left, new_left)
+        for index in np.nonzero(worse)[0]:
+            z[:, index] = inverse_step(problem, roots[index], z[:, index], transposed=False)
         seen = measure(problem, roots, z, left)
     judgement = judge(problem, roots, z, left, seen=seen)
     mates = np.concatenate(partner)
     bounds = oscillator_bounds(problem, roots, judgement.bound, which, blocks)
     computed = roots
-    roots, bounds, clustered = average_clusters(roots, bounds, which, mates, states)
+    roots, bounds, clustered = average_clusters(roots, bounds, which, mates, states, problem.amplification)
     return Roots(
         values=roots,
         computed=computed,

@@ -13,10 +13,12 @@ if TYPE_CHECKING:
 
     from mdof.eigen.reduce import NormalisedProblem
 
-__all__ = ["refine", "settled"]
+__all__ = ["inverse_step", "refine", "settled"]
 
 _EPS = float(np.finfo(np.float64).eps)
 _REFINEMENTS = 6
+#: Cosine from which two shapes are those of roots about to collide.
+_ALIKE = 1 - 1e-6
 
 
 def refine(
@@ -44,9 +46,9 @@ def refine(
         if turn == _REFINEMENTS - 1:
             break
         for index in active[rough]:
-            vectors[:, index] = _inverse_step(problem, values[index], vectors[:, index], transposed=False)
+            vectors[:, index] = inverse_step(problem, values[index], vectors[:, index], transposed=False)
             if left is not None:
-                left[:, index] = _inverse_step(problem, values[index], left[:, index], transposed=True)
+                left[:, index] = inverse_step(problem, values[index], left[:, index], transposed=True)
         # Steps of a few roundings are as good as none, and steps that no longer shrink are rounding themselves.
         length = np.abs(seen.step)
         going = wanted & (length > 16 * _EPS * np.abs(old)) & (length < 0.1 * last[active])
@@ -64,7 +66,7 @@ def settled(seen: Measured, values: NDArray[np.complex128], size: int) -> bool:
     return not bool(np.any(moving & (long | (seen.backward > 0.5 * size * _EPS))))
 
 
-def _inverse_step(
+def inverse_step(
     problem: NormalisedProblem, value: complex, vector: NDArray[np.complex128], *, transposed: bool
 ) -> NDArray[np.complex128]:
     """One step of inverse iteration on Q(λ), kept only where it leaves a smaller residual."""
@@ -77,17 +79,25 @@ def _inverse_step(
         quadratic, slope = quadratic.T, slope.T
     # Equilibration keeps the elimination stable where stiff and soft modes stand side by side.
     row = 1.0 / np.maximum(np.abs(quadratic).max(axis=1), 1e-300)
+    scaled = quadratic * row[:, None]
+    best, least = vector, np.linalg.norm(quadratic @ vector)
     try:
-        new = np.linalg.solve(quadratic * row[:, None], row * (slope @ vector))
+        # Near a double root the slope times the shape has nothing along the conjugate shape: take that, too.
+        tries = np.linalg.solve(scaled, row[:, None] * np.column_stack([slope @ vector, vector.conj()]))
     except np.linalg.LinAlgError:
         # Singular to the last digit: the root is exact in working precision, and its null vector is the shape.
-        new = np.linalg.svd(quadratic * row[:, None])[2][-1].conj()
-    length = np.linalg.norm(new)
-    if not np.isfinite(length) or length == 0:
-        return vector.astype(np.complex128)
-    new = new / length
-    better = np.linalg.norm(quadratic @ new) < np.linalg.norm(quadratic @ vector)
-    return np.asarray(new if better else vector, dtype=np.complex128)
+        tries = np.linalg.svd(scaled)[2][-1:].conj().T
+    for number, new in enumerate(tries.T):
+        length = np.linalg.norm(new)
+        if not np.isfinite(length) or length == 0:
+            continue
+        new = new / length
+        rest = np.linalg.norm(quadratic @ new)
+        # The conjugate also finds shapes of other roots nearby, with residuals as small.
+        same = number == 0 or abs(np.vdot(vector, new)) > _ALIKE * np.linalg.norm(vector)
+        if rest < least and same:
+            best, least = new, rest
+    return np.asarray(best, dtype=np.complex128)
 
 
 def _gaps(values: NDArray[np.complex128], which: NDArray[np.int64]) -> NDArray[np.float64]:

@@ -112,7 +112,9 @@ class _Solution:
         self.problem: NormalisedProblem = rotate_equal(normalise(system))[0]
         self.references: NDArray[np.float64] | None = None
         if len(self.problem.loss_rows):
-            self.roots, self.references = solve_floating(self.problem)
+            self.roots, self.references = solve_floating(
+                self.problem, lambda roots: pair_roots(roots, self.problem.heavy).pairs
+            )
         else:
             self.roots = solve_complete(self.problem, method)
         self.pairing: Pairing = pair_roots(self.roots, self.problem.heavy)

@@ -133,11 +133,14 @@ def test_the_mean_is_as_well_known_as_its_subspace_stands_apart(coupling: float)
     mean, bound, *_ = put_together([-1 + 1e-12, -1 - 1e-12, -3.0], 1e-12, state)
     R = scipy.linalg.solve_sylvester(state[:2, :2], np.array([[3.0]]), state[:2, 2:])
     projector = np.sqrt(1 + np.linalg.norm(R) ** 2)
-    wanted = 8 * 3 * 2.0**-52 * np.linalg.norm(state) * projector + np.abs(mean[0] - (-1 + 1e-12))
+    known = 8 * 3 * 2.0**-52 * np.linalg.norm(state) * projector
+    # Rounding ``known`` of a block with the off-diagonal 1 splits its double root by the square root of known * 1.
+    wanted = known + np.abs(mean[0] - (-1 + 1e-12)) + np.sqrt(known)
     assert bound[:2] == pytest.approx([wanted] * 2, rel=1e-6)
     # One cluster that is all there is needs no projector.
     _, whole, *_ = put_together([-1 + 1e-12, -1 - 1e-12], 1e-12, state[:2, :2])
-    assert whole == pytest.approx([8 * 2 * 2.0**-52 * np.sqrt(3.0) + 1e-12] * 2, rel=1e-3)
+    known = 8 * 2 * 2.0**-52 * np.sqrt(3.0)
+    assert whole == pytest.approx([known + 1e-12 + np.sqrt(known)] * 2, rel=1e-3)
 
 
 def test_pairs_that_reach_the_axis_at_different_places_stay_apart() -> None:
@@ -161,7 +164,8 @@ def test_the_mean_of_colliding_pairs_is_as_well_known_as_their_subspace(coupling
     _, bound, clustered, partner = put_together([-1 + 2j + d, -1 + 2j - d, -3 + 5j], d, state)
     R = scipy.linalg.solve_sylvester(double, -single, link)
     projector = np.sqrt(1 + np.linalg.norm(R) ** 2)
-    wanted = 8 * 6 * 2.0**-52 * np.linalg.norm(state) * projector + d
+    known = 8 * 6 * 2.0**-52 * np.linalg.norm(state) * projector
+    wanted = known + d + np.sqrt(known)
     # LAPACK bounds the norm of R by its Frobenius norm.
     assert bound[:2] == pytest.approx([wanted] * 2, rel=1e-3)
     assert clustered.tolist() == [True, True, False]

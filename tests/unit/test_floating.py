@@ -78,18 +78,17 @@ def assert_roots(system: mdof.System, modes: mdof.DampedModes) -> None:
 
 
 @pytest.mark.parametrize("tie", [20.0, 50.0])
-def test_real_roots_take_the_reference_of_the_nearest_oscillation(tie: float) -> None:
+def test_both_roots_of_an_overdamped_mode_share_its_own_frequency_as_reference(tie: float) -> None:
     system = overdamped(0.4, tie)
     modes = mdof.solve(system)
-    (turning,) = (mode for mode in modes if mode.damped_frequency)
     (real,) = (mode for mode in modes if mode.regime == "overdamped")
-    assert real.damping_reference == pytest.approx(turning.natural_frequency, rel=1e-12)
+    assert real.damping_reference == pytest.approx(real.natural_frequency, rel=1e-12)
     assert real.eigenvalues[0] != real.eigenvalues[1]
     assert_roots(system, modes)
 
 
-def test_without_any_oscillation_the_reference_is_the_middle_of_the_undamped_frequencies() -> None:
-    """Both masses overdamped; ω from 10 to 40 rad/s, in the middle 20."""
+def test_without_any_oscillation_every_mode_still_has_its_own_reference() -> None:
+    """Both masses overdamped; sqrt(λs λf) is the undamped ω of each, 10 and 40 rad/s."""
     graph = nx.MultiGraph(directions=("x",), damping={})
     graph.add_node("ground", kind="ground")
     for name, stiffness in (("a", 100.0), ("b", 1600.0)):
@@ -99,7 +98,7 @@ def test_without_any_oscillation_the_reference_is_the_middle_of_the_undamped_fre
         )
     system = mdof.assemble(graph)
     modes = mdof.solve(system)
-    assert [mode.damping_reference for mode in modes] == pytest.approx([20.0, 20.0], rel=1e-12)
+    assert [mode.damping_reference for mode in modes] == pytest.approx([10.0, 40.0], rel=1e-12)
     assert_roots(system, modes)
 
 
