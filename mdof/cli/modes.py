@@ -9,8 +9,10 @@ import click
 
 from mdof.cli.options import format_option, model_arguments, state_option
 from mdof.cli.session import Session
+from mdof.errors import UnverifiedError
 
 if TYPE_CHECKING:
+    from mdof.certify import Certificate
     from mdof.description.schema import Model
     from mdof.modes.mode import DampedModes
 
@@ -21,9 +23,18 @@ if TYPE_CHECKING:
 @format_option("table", "json", "csv")
 @click.option("--archive", metavar="FOLDER", type=click.Path(), help="Archive every run as one file in this folder.")
 @click.option("--figure", metavar="FILE", type=click.Path(), help="Draw pole map and mode shapes: .svg, .png or .pdf.")
+@click.option(
+    "--certify", "wants_proof", is_flag=True, help="Prove every mode by exact and ball arithmetic (extra `certify`)."
+)
 @click.pass_obj
 def modes(
-    session: Session, models: tuple[str, ...], state: str | None, form: str, archive: str | None, figure: str | None
+    session: Session,
+    models: tuple[str, ...],
+    state: str | None,
+    form: str,
+    archive: str | None,
+    figure: str | None,
+    wants_proof: bool,
 ) -> None:
     """Find every damped mode of each MODEL, verified.
 
@@ -51,8 +62,18 @@ def modes(
         from mdof.report.checking import solve_model
 
         result = solve_model(model)
-        _show(session, model, result, form, first=shown == 0)
+        proof = None
+        if wants_proof:
+            from mdof.certify import certify
+
+            proof = certify(result, say=session.say)
+        _show(session, model, result, form, first=shown == 0, proof=proof)
         shown += 1
+        if proof is not None and proof.contradicted:
+            session.worsen(UnverifiedError.exit_status)
+            if archive is not None or figure is not None:
+                session.say("neither archived nor drawn, as the proof contradicts it")
+            return
         if archive is not None:
             from mdof.archive.run import write_run
 
@@ -73,11 +94,18 @@ def modes(
         session.say("\n" + cautions(session.look(sys.stderr)))
 
 
-def _show(session: Session, model: Model, result: DampedModes, form: str, *, first: bool) -> None:
+def _show(
+    session: Session, model: Model, result: DampedModes, form: str, *, first: bool, proof: Certificate | None
+) -> None:
     from mdof.report import records
 
     if form == "json":
-        session.data(records.json_line(records.modes_record(model, result)))
+        record = records.modes_record(model, result)
+        if proof is not None:
+            from mdof.report.proof_record import proof_record
+
+            record["proof"] = proof_record(proof)
+        session.data(records.json_line(record))
     elif form == "csv":
         rows = [records.MODE_COLUMNS] if first else []
         session.data(b"".join(records.csv_line(row) for row in [*rows, *records.mode_csv_rows(model, result)]))
@@ -95,7 +123,20 @@ def _show(session: Session, model: Model, result: DampedModes, form: str, *, fir
                 result.method, result.loss_reference, records.verification_record(result.verification), look
             )
         )
+    if proof is not None:
+        _show_proof(session, proof, form)
     if result.findings:
         from mdof.report.tables import findings_block
 
         session.say(("\n" if form == "table" else "") + findings_block(result.findings, session.look(sys.stderr)))
+
+
+def _show_proof(session: Session, proof: Certificate, form: str) -> None:
+    """The table on standard output; its reasons, and without a table its summary, on standard error."""
+    from mdof.report.proof_table import proof_reasons, proof_table
+
+    if form == "table":
+        session.data("\n" + proof_table(proof, session.look()))
+    else:
+        session.say(proof.summary)
+    session.say(proof_reasons(proof, session.look(sys.stderr)))

@@ -193,7 +193,6 @@ class _Solution:
             None if single else second,
             (float(roots.bounds[slow]), float(roots.bounds[slow if single else fast])),
             relaxation=slow in self.pairing.relaxation,
-            passive=self.problem.passive,
         )
 
     def _eigenvalues(self, pair: tuple[int, int]) -> tuple[complex, complex]:

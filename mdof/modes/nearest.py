@@ -203,9 +203,7 @@ def _numbers(values: Complex, bounds: Real, pair: tuple[int, int]) -> Numbers:
     first, second = _eigenvalues(values, pair)
     single = pair[1] < 0
     last = pair[0] if single else pair[1]
-    return classify(
-        first, None if single else second, (float(bounds[pair[0]]), float(bounds[last])), relaxation=False, passive=True
-    )
+    return classify(first, None if single else second, (float(bounds[pair[0]]), float(bounds[last])), relaxation=False)
 
 
 def _verified(system: System, backward: Real, numbers: list[Numbers], pairs: list[tuple[int, int]]) -> Verification:

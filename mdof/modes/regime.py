@@ -45,7 +45,6 @@ def classify(
     bounds: tuple[float, float],
     *,
     relaxation: bool = False,
-    passive: bool = False,
 ) -> Numbers:
     """Regime and numbers of a mode.
 
@@ -57,8 +56,6 @@ def classify(
         Forward bounds on the two roots.
     relaxation : bool
         The single root belongs to a first-order state.
-    passive : bool
-        The system cannot gain energy, so growth within rounding is none.
     """
     if slow == 0 or fast == 0:
         other = slow if fast is None or slow != 0 else fast
@@ -75,7 +72,7 @@ def classify(
             return _numbers(Regime.DIVERGENT, None, None, rate, None, relative)
         return _numbers(Regime.RELAXATION if relaxation else Regime.OVERDAMPED, None, None, rate, None, relative)
     if slow.imag != 0:
-        return _oscillating(slow, bounds[0], relative, passive)
+        return _oscillating(slow, bounds[0], relative)
     product = slow.real * fast.real
     if product < 0 or (slow.real > 0 and fast.real > 0):
         return _numbers(Regime.DIVERGENT, None, None, -slow.real, None, relative)
@@ -125,11 +122,11 @@ def time_to_two_percent(regime: Regime, eigenvalues: Sequence[complex]) -> float
     return time / slow
 
 
-def _oscillating(root: complex, bound: float, relative: float, passive: bool) -> Numbers:
+def _oscillating(root: complex, bound: float, relative: float) -> Numbers:
     frequency = abs(root)
     ratio = -root.real / frequency
     ratio_bound = relative * abs(root.imag) / frequency + relative**2 + 2e-15
-    if root.real == 0 or abs(root.real) <= bound or (passive and root.real > 0):
+    if root.real == 0 or abs(root.real) <= bound:
         return _numbers(Regime.UNDAMPED, frequency, 0.0, 0.0, ratio_bound, relative)
     if root.real > 0:
         return _numbers(Regime.UNSTABLE, frequency, ratio, -root.real, ratio_bound, relative)

@@ -135,7 +135,7 @@ def _solved(problem: NormalisedProblem, varied: NDArray[np.bool_], share: NDArra
         second = first.conjugate() if fast == slow else None if fast < 0 else complex(roots.values[fast])
         bounds = (float(roots.bounds[slow]), float(roots.bounds[slow if fast < 0 else fast]))
         relaxation = slow in pairing.relaxation
-        numbers.append(classify(first, second, bounds, relaxation=relaxation, passive=problem.passive))
+        numbers.append(classify(first, second, bounds, relaxation=relaxation))
     slow_index = np.array([pair[0] for pair in pairing.pairs])
     return _At(
         roots=roots.values[slow_index],

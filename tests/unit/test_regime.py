@@ -48,9 +48,9 @@ def test_a_bound_as_wide_as_the_real_part_leaves_undamped() -> None:
     assert classify(-1e-11 + 5j, -1e-11 - 5j, (1e-12, 1e-12)).regime is Regime.UNDERDAMPED
 
 
-def test_a_passive_system_never_grows() -> None:
-    assert classify(1e-9 + 5j, 1e-9 - 5j, EXACT, passive=True).regime is Regime.UNDAMPED
-    assert classify(1e-9 + 5j, 1e-9 - 5j, EXACT).regime is Regime.UNSTABLE
+def test_growth_within_the_bound_is_none_and_beyond_it_is_growth() -> None:
+    assert classify(1e-9 + 5j, 1e-9 - 5j, (2e-9, 2e-9)).regime is Regime.UNDAMPED
+    assert classify(1e-9 + 5j, 1e-9 - 5j, (5e-10, 5e-10)).regime is Regime.UNSTABLE
 
 
 def test_a_divergent_pair_has_no_frequency_and_no_ratio() -> None:
