@@ -9,6 +9,7 @@ from __future__ import annotations
 import dataclasses
 from dataclasses import dataclass, field
 from functools import cached_property
+from itertools import pairwise
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -348,7 +349,7 @@ def _content(columns: Any) -> list[tuple[bytes, bytes]]:
     cuts = columns.indptr
     return [
         (columns.indices[i:j].astype(np.int64).tobytes(), columns.data[i:j].tobytes())
-        for i, j in zip(cuts[:-1], cuts[1:], strict=True)
+        for i, j in pairwise(cuts)
     ]
 
 

@@ -127,7 +127,9 @@ def judge(
         uncertain = np.abs(seen.numerator) + (len(vectors) + 8) * _EPS * problem.amplification * effort
         bound = uncertain / np.abs(seen.slope)
     # The second factor of the forward error is the residual seen by all other modes.
-    bound = np.where(np.isfinite(bound), bound, np.inf) + _second_order(values, other, seen.rest, seen.slope)
+    bound = np.where(np.isfinite(bound), bound, np.inf) + _second_order(
+        values, other, seen.rest, seen.slope, problem.heavy
+    )
     return Judgement(backward=seen.backward, bound=bound, slope=seen.slope)
 
 
@@ -205,11 +207,12 @@ def _second_order(
     other: NDArray[np.complex128],
     rest: NDArray[np.complex128],
     slope: NDArray[np.complex128],
+    heavy: int,
 ) -> NDArray[np.float64]:
     """Σ_k |z_kᵀ r_i|² / (|λ_i − λ_k| |slope_k slope_i|) over the other roots and their conjugates.
 
-    Free motions have the exact root 0, double and of slope 0 where nothing damps them; they count as 1 / |λ_i|². Large
-    problems take |z_k| |r_i| for the products, which costs less and is never smaller.
+    Free motions have the exact root 0, double and of slope 0 where nothing damps them; they count as
+    1 / (|λ_i|² z_kᵀMz_k). Large problems take |z_k| |r_i| for the products, which costs less and is never smaller.
     """
     if len(values) > _MANY:
         reach = np.linalg.norm(other, axis=0) ** 2
@@ -225,7 +228,8 @@ def _second_order(
     free = values == 0
     with np.errstate(divide="ignore", invalid="ignore"):
         pull = np.abs(slope)[:, None] * gap
-        pull[free] = np.maximum(pull[free], gap[free] ** 2)
+        modal_mass = np.linalg.norm(other[:heavy, free], axis=0) ** 2
+        pull[free] = np.maximum(pull[free], modal_mass[:, None] * gap[free] ** 2)
         pull_conjugate = np.abs(slope)[:, None] * gap_conjugate
         pull_conjugate[free] = np.inf
         total = (seen / pull + seen_conjugate / pull_conjugate).sum(axis=0) / np.abs(slope)

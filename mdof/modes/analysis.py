@@ -125,13 +125,24 @@ class _Solution:
             real_times(self.problem.recover, self.pairing.vectors),
             np.where(roots.clustered, 0.0, roots.bounds),
         )
-        self.roots = dataclasses.replace(
-            roots,
-            values=np.where(roots.clustered, roots.values, polished),
-            bounds=roots.bounds + np.abs(polished - roots.computed),
-        )
+        bounds = roots.bounds + np.abs(polished - roots.computed)
+        if self.problem.symmetric:
+            bounds = np.maximum(bounds, self._physical_bounds(physical, polished))
+        self.roots = dataclasses.replace(roots, values=np.where(roots.clustered, roots.values, polished), bounds=bounds)
         #: The larger of the backward errors in mass-normalised and in physical coordinates, per root.
         self.backward: NDArray[np.float64] = np.maximum(errors, roots.backward)
+
+    def _physical_bounds(self, physical: PhysicalResidual, values: NDArray[np.complex128]) -> NDArray[np.float64]:
+        """First-order bounds from the model's own numbers, for simple roots; 0 for others [1/s]."""
+        roots = self.roots
+        uncertain, slope, inertia = physical.uncertainty(values, self.reduced)
+        members = np.bincount(roots.block, weights=np.where(roots.values.imag > 0, 2, 1))
+        with np.errstate(divide="ignore", invalid="ignore"):
+            bounds = uncertain / np.abs(slope)
+            # The quadratic of a mode that nothing couples bounds its roots even where they meet.
+            double = np.sqrt(2 * uncertain / np.abs(inertia))
+        bounds = np.where(members[roots.block] <= 2, np.fmin(bounds, double), bounds)
+        return np.where(roots.clustered | (values == 0), 0.0, np.nan_to_num(bounds, posinf=np.inf))
 
     def modes(self, count: int | None, near: float) -> DampedModes:
         roots, pairing = self.roots, self.pairing

@@ -35,8 +35,6 @@ LARGEST_BOUND = 1e-2
 _FEW = 64
 #: Roots computed beyond those asked for, so that pairs are not cut apart.
 _SPARE = 4
-#: Rounding errors of a product with a sparse row, in units of the roundoff.
-_ROW = 32
 
 
 def obstacle(system: System) -> str:
@@ -137,27 +135,16 @@ def _refined(system: System, physical: PhysicalResidual, found: Nearest) -> tupl
     step = -_dots(x, values**2 * inertia + values * drag + elastic) / slope
     values = np.where(values.imag == 0, (values + step).real, values + step)
     rest = values**2 * inertia + values * drag + elastic
-    size, magnitude = np.abs(values), np.abs(x)
-    effort = size**2 * _dots(magnitude, abs(system.mass) @ magnitude)
-    for columns, weight in (
-        (system.spring_columns, system.stiffness[:, None] * np.ones(len(values))),
-        (system.spring_columns, system.loss_damping()[:, None] * size),
-        (system.damper_columns, system.damping[:, None] * size),
-    ):
-        effort += _dots(weight * np.abs(columns.T @ x), abs(columns.T) @ magnitude)
-    for part, factor in ((system.extra_stiffness, 1.0), (system.extra_damping, size)):
-        if part is not None:
-            effort += factor * _dots(magnitude, abs(part) @ magnitude)
-    effort += size * _dots(magnitude, np.abs(drag))
+    uncertain = physical.uncertainty(values, x)[0]
     # What the residual does through all other modes: its square over the distance to the next one.
     mass = np.maximum(system.mass.diagonal(), np.finfo(float).tiny)
     others = np.concatenate([values, values[values.imag > 0].conj()])
     distance = np.abs(values[:, None] - others[None, :])
     distance[np.arange(len(values)), np.arange(len(values))] = np.inf
+    size = np.abs(values)
     gap = np.minimum(distance.min(axis=1), size)
     second = np.sum(np.abs(rest) ** 2 / mass[:, None], axis=0) / (gap * size)
-    bounds = (np.abs(_dots(x, rest)) + _ROW * _EPS * effort + second) / np.abs(slope)
-    return values, np.asarray(bounds)
+    return values, np.asarray((uncertain + second) / np.abs(slope))
 
 
 def _pairs(system: System, values: Complex, vectors: Complex) -> list[tuple[int, int]]:

@@ -19,6 +19,8 @@ _EPS = float(np.finfo(np.float64).eps)
 _POLISHING_STEPS = 2
 #: Coordinates up to which dense products beat sparse ones.
 _SMALL = 200
+#: Rounding errors of a product with a sparse row, in units of the roundoff.
+_ROW = 32
 
 
 class PhysicalResidual:
@@ -98,6 +100,40 @@ class PhysicalResidual:
         scale = (size**2 * mass + size * damping + stiffness) * _lengths(vectors)
         return np.asarray(np.divide(residual, scale, out=np.zeros(len(values)), where=scale > 0))
 
+    def uncertainty(
+        self, values: NDArray[np.complex128], vectors: NDArray[np.complex128]
+    ) -> tuple[NDArray[np.float64], NDArray[np.complex128], NDArray[np.complex128]]:
+        """How uncertain xᵀQ(λ)x is, with its slope xᵀ(2λM + C)x and xᵀMx, for symmetric systems.
+
+        The residual seen by the shape itself, and rounding of every mass, spring and damper times the largest numbers
+        it meets on its way: a spring's stretch may be a small difference of large motions.
+
+        Returns
+        -------
+        uncertain : shape (n_roots,) ; slope, inertia : shape (n_roots,)
+        """
+        system = self.system
+        inertia, drag, elastic = self.forces(vectors)
+        size, magnitude = np.abs(values), np.abs(vectors)
+        modal_mass = _dots(vectors, inertia)
+        slope = 2 * values * modal_mass + _dots(vectors, drag)
+        own = np.abs(values**2 * modal_mass + values * _dots(vectors, drag) + _dots(vectors, elastic))
+        effort = size**2 * _dots(magnitude, abs(self.mass) @ magnitude)
+        weight = system.stiffness[:, None] * (1 + system.stiffness_proportional * size)
+        weight = np.abs(weight) + np.abs(self.loss)[:, None] * size
+        if self.references is not None:
+            floating = np.isnan(system.loss_reference) & (system.loss_factor != 0)
+            lossy = np.where(floating, system.loss_factor * system.stiffness, 0.0)
+            weight = weight + np.abs(lossy)[:, None] * (size / self.references)
+        for columns, strength in ((self.springs, weight), (self.dampers, np.abs(system.damping)[:, None] * size)):
+            effort += _dots(strength * np.abs(columns.T @ vectors), abs(columns).T @ magnitude)
+        effort += np.abs(system.mass_proportional) * size * _dots(magnitude, abs(self.mass) @ magnitude)
+        if self.extra_stiffness is not None:
+            effort += _dots(magnitude, abs(self.extra_stiffness) @ magnitude)
+        for part in self.velocity:
+            effort += size * _dots(magnitude, abs(part) @ magnitude)
+        return own + _ROW * _EPS * effort, slope, modal_mass
+
     def polish(
         self,
         values: NDArray[np.complex128],
@@ -171,6 +207,11 @@ def _ready(matrix: Any, small: bool) -> Any:
 
 def _times(matrix: Any, vectors: NDArray[np.complex128]) -> NDArray[np.complex128]:
     return real_times(matrix, vectors) if isinstance(matrix, np.ndarray) else np.asarray(matrix @ vectors)
+
+
+def _dots(first: Any, second: Any) -> Any:
+    """Σ first · second of every column, unconjugated."""
+    return np.einsum("ij,ij->j", first, second)
 
 
 def _lengths(vectors: NDArray[np.complex128]) -> NDArray[np.float64]:
