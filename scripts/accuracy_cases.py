@@ -108,12 +108,15 @@ def free_machines(rng: Generator) -> System:
 def massless_joints(rng: Generator) -> System:
     """Some coordinates without mass, damped or not."""
     n = int(rng.integers(2, 7))
-    mass = _spread(rng, 1, n)
+    mass = _spread(rng, float(rng.choice([1, 4])), n)
     mass[rng.choice(np.arange(n), int(rng.integers(1, max(2, n // 2))), replace=False)] = 0.0
     count = int(rng.integers(0, 4))
     springs = [*_chain(n), _between(n, n - 1)]
     stiff, drag = float(rng.choice([2, 6])), float(rng.choice([3, 10]))
-    return _built(mass, springs, _spread(rng, stiff, n + 1), _random_dampers(rng, n, count), _spread(rng, drag, count))
+    if rng.random() < 0.3:
+        springs = springs[1:-1]
+    k = _spread(rng, stiff, len(springs))
+    return _built(mass, springs, k, _random_dampers(rng, n, count), _spread(rng, drag, count))
 
 
 def offset_masses(rng: Generator) -> System:
@@ -122,6 +125,23 @@ def offset_masses(rng: Generator) -> System:
     M = np.array([[m, m * a], [m * a, m * a * a * (1 + share)]])
     springs = [np.array([1.0, 10.0 ** rng.uniform(-1, 1) * sign]) for sign in (1, -1)]
     return _built(M, springs, _spread(rng, 2, 2), [springs[0]], _spread(rng, 2, 1))
+
+
+def oblique_directions(rng: Generator) -> System:
+    """Springs and dampers in any direction of a body, some all but dependent."""
+    n = int(rng.integers(2, 6))
+
+    def direction() -> Real:
+        free = rng.normal(size=n)
+        return free if rng.random() < 0.6 else np.round(2 * free) / 2 + _between(n, int(rng.integers(n)))
+
+    springs = [direction() for _ in range(int(rng.integers(max(1, n - 2), n + 3)))]
+    dampers = [
+        springs[int(rng.integers(len(springs)))] if rng.random() < 0.5 else direction()
+        for _ in range(int(rng.integers(1, 4)))
+    ]
+    k = _spread(rng, float(rng.choice([2, 6, 12])), len(springs))
+    return _built(_spread(rng, 4, n), springs, k, dampers, _spread(rng, 7, len(dampers)))
 
 
 def equal_frequencies(rng: Generator) -> System:
@@ -211,6 +231,7 @@ FAMILIES: dict[str, Callable[[Generator], System]] = {
     "interlaced real roots": interlaced,
     "near critical": near_critical,
     "colliding pairs": colliding_pairs,
+    "oblique directions": oblique_directions,
     "equal frequencies": equal_frequencies,
     "free machines": free_machines,
     "massless joints": massless_joints,

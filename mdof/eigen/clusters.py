@@ -22,12 +22,15 @@ def average_clusters(
     block: NDArray[np.int64],
     partner: NDArray[np.int64],
     states: list[NDArray[np.float64] | None],
+    meeting: NDArray[np.bool_],
     amplification: float = 1.0,
 ) -> tuple[NDArray[np.complex128], NDArray[np.float64], NDArray[np.bool_]]:
     """Replace roots that cannot be told apart by their mean, whose own bound comes from the spectral projector.
 
     A nearly defective eigenvalue moves by the square root of rounding; the mean of the colliding roots does not.
-    ``partner`` is filled in place for real roots that collide.
+    ``partner`` is filled in place for real roots that collide. ``meeting`` marks roots whose slope xᵀ(2λM + D)x all
+    but vanishes, as that of a double root does: equal real roots of unlike motions have slopes of their own, and are
+    no pair.
     """
     from scipy.linalg import schur
 
@@ -50,9 +53,9 @@ def average_clusters(
         for group in connected(near):
             members = own[group]
             on_axis = bool(np.any(touches_axis[group])) or bool(np.all(values[members].imag == 0))
-            if len(members) == 1 and not on_axis:
-                continue
             if len(members) == 1 and not touches_axis[group[0]]:
+                continue
+            if on_axis and not meeting[members].any():
                 continue
             weight = np.where(values[members].imag > 0, 2.0, 1.0) if on_axis else np.ones(len(members))
             mean = complex(np.sum(weight * (values[members].real if on_axis else values[members])) / weight.sum())

@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from mdof.eigen.quadratic import Roots, solve_complete
-from mdof.eigen.verify import judge
+from mdof.eigen.verify import Judgement, judge
 from mdof.errors import UnverifiedError
 
 if TYPE_CHECKING:
@@ -82,7 +82,7 @@ def solve_floating(
         values=values,
         computed=values,
         vectors=vectors,
-        bounds=np.where(values == 0, start.bounds, judgement.bound),
+        bounds=np.where(values == 0, start.bounds, judgement.bound / _firmness(problem, values, vectors, judgement)),
         backward=judgement.backward,
         slope=judgement.slope,
         clustered=np.zeros(len(values), dtype=bool),
@@ -101,6 +101,22 @@ def _matched(problem: NormalisedProblem, reference: float) -> NormalisedProblem:
         damper_signs=np.concatenate([problem.damper_signs, np.ones(len(rows))]),
         loss_rows=np.zeros((0, problem.loss_rows.shape[1])),
     )
+
+
+def _firmness(
+    problem: NormalisedProblem, values: NDArray[np.complex128], vectors: NDArray[np.complex128], judgement: Judgement
+) -> NDArray[np.float64]:
+    """Share of its slope with which an oscillating root withstands rounding, as its reference |λ| moves with it.
+
+    With s the slope and h = zᵀHz the defect changes by a δλ + b δλ*, a = s − h/2|λ| and |b| = |h|/2|λ|: at least by
+    (|a| − |b|) |δλ|.
+    """
+    stretch = problem.loss_rows @ vectors
+    slope = judgement.slope
+    with np.errstate(divide="ignore", invalid="ignore"):
+        half = np.einsum("ij,ij->j", stretch, stretch) / (2 * np.abs(values))
+        share = np.abs(np.abs(slope - half) - np.abs(half)) / np.abs(slope)
+    return np.where(values.imag > 0, np.minimum(share, 1.0), 1.0)
 
 
 def _settle_pair(
@@ -137,7 +153,12 @@ def _real_root(near: Roots, start: Roots, index: int) -> tuple[complex, NDArray[
     like = np.abs(near.vectors[:, candidates].conj().T @ start.vectors[:, index])
     away = np.abs(near.values[candidates] - start.values[index]) / abs(start.values[index])
     best = candidates[int(np.argmax(like / (1 + away)))]
-    return complex(near.values[best]), near.vectors[:, best]
+    value = complex(near.values[best])
+    equal = candidates[np.abs(near.values[candidates] - value) <= 1e-9 * abs(value)]
+    # Equal roots have any shape within their common space: the one nearest to where this root started.
+    basis = near.vectors[:, equal]
+    shape = basis @ np.linalg.lstsq(basis, start.vectors[:, index], rcond=None)[0]
+    return value, shape / np.linalg.norm(shape)
 
 
 def _own_reference(

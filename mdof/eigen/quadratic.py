@@ -30,6 +30,9 @@ _EPS = float(np.finfo(np.float64).eps)
 
 __all__ = ["Roots", "solve_complete"]
 
+#: Slope of a root, in units of |λ| times its modal mass, below which it is about to meet another.
+_MEETING = 1e-3
+
 
 @dataclass(frozen=True, kw_only=True, slots=True, eq=False)
 class Roots:
@@ -121,7 +124,10 @@ def solve_complete(problem: NormalisedProblem, method: str = "auto") -> Roots:
     mates = np.concatenate(partner)
     bounds = oscillator_bounds(problem, roots, judgement.bound, which, blocks)
     computed = roots
-    roots, bounds, clustered = average_clusters(roots, bounds, which, mates, states, problem.amplification)
+    other = z if left is None else left
+    inertia = np.einsum("ij,ij->j", other[: problem.heavy], z[: problem.heavy])
+    meeting = np.abs(judgement.slope) <= _MEETING * np.abs(roots) * np.abs(inertia)
+    roots, bounds, clustered = average_clusters(roots, bounds, which, mates, states, meeting, problem.amplification)
     return Roots(
         values=roots,
         computed=computed,

@@ -56,6 +56,8 @@ class NormalisedProblem:
     symmetric, passive : bool
     general_rows : int
         The last so many damper rows are factors of a damping matrix given as numbers.
+    drag : float [1/s], or None
+        Mass-proportional damping, all that slows free motions beside the damper rows; None where D has other parts.
     own_damping : ndarray, shape (m,), or None
         What proportional terms add to the diagonal of ``rowsᵀ diag(signs) rows``; None where D has other parts, or
         coordinates are not the undamped modes.
@@ -79,6 +81,7 @@ class NormalisedProblem:
     symmetric: bool
     passive: bool
     general_rows: int = 0
+    drag: float | None = None
     own_damping: NDArray[np.float64] | None = None
 
     @property
@@ -197,6 +200,7 @@ def normalise(system: System) -> NormalisedProblem:
         symmetric=symmetric,
         passive=passive,
         general_rows=len(general),
+        drag=float(system.mass_proportional) if extra_c is None else None,
         own_damping=_own_damping(system, sigma, size) if modal and extra_c is None else None,
     )
 

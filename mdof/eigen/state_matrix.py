@@ -59,7 +59,7 @@ def energy_balanced(problem: NormalisedProblem, block: NDArray[np.int64]) -> Blo
         state[:held, held:] += force[heavy:].T @ from_v
         state[held:, :held] -= Dhl @ from_q
         state[held:, held:] -= Dhl @ from_v
-    moving, still = _split_free(problem, block, N, damping, heavy)
+    moving, still, rate = _split_free(problem, block, N, damping, heavy)
     keep = None
     if still.shape[1]:
         q, _ = np.linalg.qr(still[:heavy], mode="complete")
@@ -95,9 +95,9 @@ def energy_balanced(problem: NormalisedProblem, block: NDArray[np.int64]) -> Blo
     count = len(state) + zero + still.shape[1]
     mates = np.full(len(values), -1)
     if zero:
-        # Free motions have the exact root 0; those that nothing damps either have it twice.
+        # Free motions have the exact root 0; those that no damper moves have the rate of their drag, 0 or not, beside.
         start = len(values)
-        values = np.concatenate([values, np.zeros(zero + still.shape[1])])
+        values = np.concatenate([values, np.zeros(zero), np.full(still.shape[1], -rate + 0.0)])
         vectors = np.hstack([vectors, moving, still, still])
         first = start + moving.shape[1]
         pair = np.arange(still.shape[1])
@@ -136,31 +136,29 @@ def _split_free(
     N: NDArray[np.float64],
     damping: NDArray[np.float64],
     heavy: int,
-) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-    """Free motions that a damper moves, and those that nothing resists at all."""
-    if not N.shape[1]:
-        return N, N
-    if not problem.symmetric:
-        return N, N[:, :0]
-    if problem.own_damping is None:
+) -> tuple[NDArray[np.float64], NDArray[np.float64], float]:
+    """Free motions that a damper moves; those that none does; and the rate at which drag slows the latter [1/s]."""
+    if not N.shape[1] or not problem.symmetric:
+        return N, N[:, :0], 0.0
+    if problem.drag is None:
         N = N @ np.linalg.eigh(N.T @ damping @ N)[1]
-        pull, noise = np.linalg.norm(damping @ N, axis=0), float(np.linalg.norm(damping))
+        still = np.linalg.norm(damping @ N, axis=0) <= 16 * len(N) * _EPS * float(np.linalg.norm(damping))
+        rate = 0.0
     else:
         # By the factors, a weak drag shows beside strong dampers that a free motion does not move.
         whole = problem.damper_rows[:, block]
         rows = whole @ N
         # What a damper within the machine makes of a free motion is its rounding.
         rows[np.abs(rows) <= 64 * len(N) * _EPS * np.linalg.norm(whole, axis=1)[:, None]] = 0.0
-        own = N.T @ (problem.own_damping[block][:, None] * N)
-        turn = np.linalg.eigh((rows.T * problem.damper_signs) @ rows + own)[1]
-        N, rows = N @ turn, rows @ turn
-        pull, noise = (
-            np.sqrt(np.sum(rows**2, axis=0) + np.abs(np.diag(turn.T @ own @ turn))),
-            float(np.linalg.norm(rows)),
-        )
-    touched = pull > 16 * len(N) * _EPS * noise
-    still = ~touched & (np.linalg.norm(N[:heavy], axis=0) > 1e-8)
-    return N[:, ~still], N[:, still]
+        rows = rows[np.any(rows != 0, axis=1)]
+        still = np.ones(N.shape[1], dtype=bool)
+        if len(rows):
+            _, size, turn = np.linalg.svd(rows / np.linalg.norm(rows, axis=1)[:, None])
+            still[: int(np.sum(size > 64 * len(N) * _EPS))] = False
+            N = N @ turn.T
+        rate = problem.drag
+    still &= np.linalg.norm(N[:heavy], axis=0) > 1e-8
+    return N[:, ~still], N[:, still], rate
 
 
 def companion(problem: NormalisedProblem) -> BlockRoots:

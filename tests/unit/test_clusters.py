@@ -25,7 +25,9 @@ def test_real_roots_about_to_meet_share_their_mean() -> None:
     state = np.array([[0.0, 1.0], [-1.0, -2.0]])
     values = np.array([-1 + 1e-9, -1 - 1e-9], dtype=complex)
     partner = np.array([-1, -1])
-    mean, _, clustered = average_clusters(values, np.full(2, 1e-9), np.zeros(2, dtype=int), partner, [state])
+    mean, _, clustered = average_clusters(
+        values, np.full(2, 1e-9), np.zeros(2, dtype=int), partner, [state], np.ones(len(values), dtype=bool)
+    )
     assert mean == pytest.approx([-1, -1], rel=1e-15)
     assert clustered.all()
     assert partner.tolist() == [1, 0]
@@ -34,14 +36,16 @@ def test_real_roots_about_to_meet_share_their_mean() -> None:
 def test_a_complex_pair_about_to_reach_the_axis_is_put_on_it() -> None:
     state = np.array([[0.0, 1.0], [-1.0, -2.0]])
     values = np.array([-1 + 1e-9j])
-    mean, _, _ = average_clusters(values, np.array([1e-8]), np.zeros(1, dtype=int), np.array([-1]), [state])
+    mean, _, _ = average_clusters(
+        values, np.array([1e-8]), np.zeros(1, dtype=int), np.array([-1]), [state], np.ones(1, dtype=bool)
+    )
     assert mean[0].imag == 0
 
 
 def test_roots_apart_are_left_alone() -> None:
     values = np.array([-1 + 2j, -1 + 2.001j])
     same, bounds, clustered = average_clusters(
-        values, np.full(2, 1e-12), np.zeros(2, dtype=int), np.array([-1, -1]), [np.eye(4)]
+        values, np.full(2, 1e-12), np.zeros(2, dtype=int), np.array([-1, -1]), [np.eye(4)], np.ones(2, dtype=bool)
     )
     assert same.tolist() == values.tolist()
     assert bounds.tolist() == [1e-12, 1e-12]
@@ -54,7 +58,12 @@ def put_together(
     partner = np.full(len(values), -1)
     number = np.zeros(len(values), dtype=int) if block is None else np.array(block)
     mean, bound, clustered = average_clusters(
-        np.array(values, dtype=complex), np.full(len(values), bounds), number, partner, [state] * (number.max() + 1)
+        np.array(values, dtype=complex),
+        np.full(len(values), bounds),
+        number,
+        partner,
+        [state] * (number.max() + 1),
+        np.ones(len(values), dtype=bool),
     )
     return mean, bound, clustered, partner.tolist()
 
@@ -118,10 +127,14 @@ def test_no_bound_however_large_joins_roots_more_than_a_few_millionths_apart() -
 def test_zero_roots_and_blocks_without_a_state_matrix_are_left_alone() -> None:
     partner = np.array([-1, -1])
     values = np.zeros(2, dtype=complex)
-    same, *_ = average_clusters(values, np.full(2, 1e-9), np.zeros(2, dtype=int), partner, [np.eye(2)])
+    same, *_ = average_clusters(
+        values, np.full(2, 1e-9), np.zeros(2, dtype=int), partner, [np.eye(2)], np.ones(2, dtype=bool)
+    )
     assert same.tolist() == [0, 0]
     values = np.array([-1.0, -1.0 - 1e-12], dtype=complex)
-    same, _, clustered = average_clusters(values, np.full(2, 1e-9), np.zeros(2, dtype=int), partner, [None])
+    same, _, clustered = average_clusters(
+        values, np.full(2, 1e-9), np.zeros(2, dtype=int), partner, [None], np.ones(2, dtype=bool)
+    )
     assert same.tolist() == values.tolist()
     assert not clustered.any()
 
@@ -170,3 +183,14 @@ def test_the_mean_of_colliding_pairs_is_as_well_known_as_their_subspace(coupling
     assert bound[:2] == pytest.approx([wanted] * 2, rel=1e-3)
     assert clustered.tolist() == [True, True, False]
     assert partner == [-1, -1, -1]
+
+
+def test_equal_real_roots_of_unlike_motions_are_no_pair() -> None:
+    values = np.array([-1.0, -1.0], dtype=complex)
+    partner, state = np.array([-1, -1]), np.diag([-1.0, -1.0])
+    same, _, clustered = average_clusters(
+        values, np.full(2, 1e-9), np.zeros(2, dtype=int), partner, [state], np.zeros(2, dtype=bool)
+    )
+    assert same.tolist() == values.tolist()
+    assert not clustered.any()
+    assert partner.tolist() == [-1, -1]
