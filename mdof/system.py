@@ -347,10 +347,7 @@ def _content(columns: Any) -> list[tuple[bytes, bytes]]:
     """Rows and entries of every column, to tell equal ones."""
     columns = columns.sorted_indices()
     cuts = columns.indptr
-    return [
-        (columns.indices[i:j].astype(np.int64).tobytes(), columns.data[i:j].tobytes())
-        for i, j in pairwise(cuts)
-    ]
+    return [(columns.indices[i:j].astype(np.int64).tobytes(), columns.data[i:j].tobytes()) for i, j in pairwise(cuts)]
 
 
 def _weighted_gram(columns: Any, weights: NDArray[np.float64]) -> Any:
