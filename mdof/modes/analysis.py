@@ -126,7 +126,7 @@ class _Solution:
             np.where(roots.clustered, 0.0, roots.bounds),
         )
         bounds = roots.bounds + np.abs(polished - roots.computed)
-        if self.problem.symmetric:
+        if self.problem.symmetric and system.extra_stiffness is None:
             bounds = np.maximum(bounds, self._physical_bounds(physical, polished))
         self.roots = dataclasses.replace(roots, values=np.where(roots.clustered, roots.values, polished), bounds=bounds)
         #: The larger of the backward errors in mass-normalised and in physical coordinates, per root.

@@ -46,6 +46,8 @@ class PhysicalResidual:
         self.extra_stiffness = _ready(system.extra_stiffness, small)
         self.velocity = [_ready(part, small) for part in (system.extra_damping, system.gyroscopic) if part is not None]
         self.loss = system.loss_damping()
+        floating = np.isnan(system.loss_reference) & (system.loss_factor != 0)
+        self.floating_loss = np.where(floating, system.loss_factor * system.stiffness, 0.0)
         middle = None if references is None else float(np.median(references))
         self.norms = tuple(_longest(part) for part in self._parts(middle))
 
@@ -71,9 +73,7 @@ class PhysicalResidual:
         elastic = self.springs @ (system.stiffness[:, None] * stretch)
         drag = self.springs @ (self.loss[:, None] * stretch)
         if self.references is not None:
-            floating = np.isnan(system.loss_reference) & (system.loss_factor != 0)
-            weight = np.where(floating, system.loss_factor * system.stiffness, 0.0)
-            drag = drag + (self.springs @ (weight[:, None] * stretch)) / self.references[index]
+            drag = drag + (self.springs @ (self.floating_loss[:, None] * stretch)) / self.references[index]
         drag = drag + self.dampers @ (system.damping[:, None] * (self.dampers.T @ vectors))
         inertia = _times(self.mass, vectors)
         if self.extra_stiffness is not None:
@@ -101,7 +101,10 @@ class PhysicalResidual:
         return np.asarray(np.divide(residual, scale, out=np.zeros(len(values)), where=scale > 0))
 
     def uncertainty(
-        self, values: NDArray[np.complex128], vectors: NDArray[np.complex128]
+        self,
+        values: NDArray[np.complex128],
+        vectors: NDArray[np.complex128],
+        forces: tuple[Any, Any, Any] | None = None,
     ) -> tuple[NDArray[np.float64], NDArray[np.complex128], NDArray[np.complex128]]:
         """How uncertain xᵀQ(λ)x is, with its slope xᵀ(2λM + C)x and xᵀMx, for symmetric systems.
 
@@ -110,29 +113,28 @@ class PhysicalResidual:
 
         Returns
         -------
-        uncertain : shape (n_roots,) ; slope, inertia : shape (n_roots,)
+        uncertain, slope, inertia : shape (n_roots,)
         """
         system = self.system
-        inertia, drag, elastic = self.forces(vectors)
+        inertia, drag, elastic = (_dots(vectors, force) for force in forces or self.forces(vectors))
         size, magnitude = np.abs(values), np.abs(vectors)
-        modal_mass = _dots(vectors, inertia)
-        slope = 2 * values * modal_mass + _dots(vectors, drag)
-        own = np.abs(values**2 * modal_mass + values * _dots(vectors, drag) + _dots(vectors, elastic))
-        effort = size**2 * _dots(magnitude, abs(self.mass) @ magnitude)
-        weight = system.stiffness[:, None] * (1 + system.stiffness_proportional * size)
-        weight = np.abs(weight) + np.abs(self.loss)[:, None] * size
-        if self.references is not None:
-            floating = np.isnan(system.loss_reference) & (system.loss_factor != 0)
-            lossy = np.where(floating, system.loss_factor * system.stiffness, 0.0)
-            weight = weight + np.abs(lossy)[:, None] * (size / self.references)
-        for columns, strength in ((self.springs, weight), (self.dampers, np.abs(system.damping)[:, None] * size)):
-            effort += _dots(strength * np.abs(columns.T @ vectors), abs(columns).T @ magnitude)
-        effort += np.abs(system.mass_proportional) * size * _dots(magnitude, abs(self.mass) @ magnitude)
+        own = np.abs(values**2 * inertia + values * drag + elastic)
+        effort = size * (size + abs(system.mass_proportional)) * _dots(magnitude, abs(self.mass) @ magnitude)
+        if self.springs.shape[1]:
+            met = np.abs(self.springs.T @ vectors)
+            met *= abs(self.springs).T @ magnitude
+            effort += np.abs(system.stiffness) @ met * (1 + abs(system.stiffness_proportional) * size)
+            effort += np.abs(self.loss) @ met * size
+            if self.references is not None:
+                effort += np.abs(self.floating_loss) @ met * (size / self.references)
+        if self.dampers.shape[1]:
+            met = np.abs(self.dampers.T @ vectors) * (abs(self.dampers).T @ magnitude)
+            effort += np.abs(system.damping) @ met * size
         if self.extra_stiffness is not None:
             effort += _dots(magnitude, abs(self.extra_stiffness) @ magnitude)
         for part in self.velocity:
             effort += size * _dots(magnitude, abs(part) @ magnitude)
-        return own + _ROW * _EPS * effort, slope, modal_mass
+        return own + _ROW * _EPS * effort, 2 * values * inertia + drag, inertia
 
     def polish(
         self,
