@@ -157,6 +157,10 @@ class PhysicalResidual:
         """
         values, vectors = values.copy(), vectors.copy()
         errors = self.backward_errors(values, vectors)
+        free = np.nonzero((errors > 0.5 * self.system.size * _EPS) & (values == 0))[0]
+        if len(free):
+            vectors[:, free] = self._unstretched(vectors[:, free])
+            errors[free] = self.backward_errors(values[free], vectors[:, free])
         for index in np.nonzero((errors > 0.5 * self.system.size * _EPS) & (values != 0))[0]:
             start, vector = complex(values[index]), vectors[:, index]
             value = start
@@ -168,6 +172,13 @@ class PhysicalResidual:
                 if after < errors[index]:
                     errors[index], values[index], vectors[:, index] = after, value, vector
         return values, vectors, errors
+
+    def _unstretched(self, vectors: NDArray[np.complex128]) -> NDArray[np.complex128]:
+        """Free motions without the stretch of the springs that the rounding of light coordinates has left in them."""
+        columns = _ready(self.system.spring_columns, small=True)
+        columns = columns / np.maximum(np.linalg.norm(columns, axis=0), np.finfo(float).tiny)
+        stretch = columns.T @ vectors
+        return np.asarray(vectors - np.linalg.lstsq(columns.T, stretch, rcond=None)[0])
 
     def _inverse_step(
         self, value: complex, vector: NDArray[np.complex128], index: int, freedom: float
