@@ -64,6 +64,21 @@ REGISTRY: dict[str, FindingKind] = {
         meaning="A connection feeds energy into the motion.",
         advice="Check the sign; a mode that gains energy grows until something limits or breaks it.",
     ),
+    "doubtful-loss-factor": FindingKind(
+        severity=Severity.WARNING,
+        meaning="A loss factor above 1 is more than any mount or joint in use has.",
+        advice="Loss factors are plain numbers: 8 % is 0.08 or `8 %`. For a damping ratio ζ write twice as much.",
+    ),
+    "doubtful-inertia": FindingKind(
+        severity=Severity.WARNING,
+        meaning="A radius of gyration does not go with the size of its body.",
+        advice="Check the unit and the powers of ten of the inertia, and that it is about the body's own centre.",
+    ),
+    "centre-at-origin": FindingKind(
+        severity=Severity.NOTE,
+        meaning="A body that can turn states no centre of gravity; the origin is taken.",
+        advice="Give its `centre`, or write [0, 0, 0] to say that you mean it.",
+    ),
     "gear-reaction": FindingKind(
         severity=Severity.NOTE,
         meaning="The tooth force of a gear acts on the two shafts only; the reaction on the housing is not modelled.",

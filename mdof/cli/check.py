@@ -22,7 +22,8 @@ if TYPE_CHECKING:
 @format_option("table", "json")
 @click.pass_context
 def check(ctx: click.Context, models: tuple[str, ...], schema: bool, state: str | None, form: str) -> None:
-    """Read each MODEL and print bodies, total mass, centre of gravity, connections by kind, free directions, findings.
+    """Read each MODEL and print bodies with mass, centre of gravity and inertia, connections with their values, free
+    directions and findings.
 
     Nothing is solved. Everything that is wrong with a file is reported at once, with line, column and key path.
     """
@@ -36,7 +37,7 @@ def check(ctx: click.Context, models: tuple[str, ...], schema: bool, state: str 
         return
     if not models:
         raise click.UsageError("Missing argument 'MODEL...'.", ctx)
-    session.load("mdof.description.reading", "mdof.report.checking", "mdof.report.summaries")
+    session.load("mdof.description.reading", "mdof.report.checking", "mdof.report.check_table")
     shown = 0
 
     def work(model: Model) -> None:
@@ -49,7 +50,7 @@ def check(ctx: click.Context, models: tuple[str, ...], schema: bool, state: str 
 
             session.data(json_line(check_record(model, checked)))
         else:
-            from mdof.report.summaries import check_text
+            from mdof.report.check_table import check_text
             from mdof.report.tables import heading
 
             look = session.look()

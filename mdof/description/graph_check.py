@@ -14,7 +14,7 @@ from mdof.units import nearest
 __all__ = ["validate_graph"]
 
 _GRAPH = ("title", "name", "directions", "damping", "reference_frequency")
-_NODE = ("kind", "mass", "centre", "inertia", "directions", "massless", "spin")
+_NODE = ("kind", "mass", "centre", "centre_assumed", "inertia", "directions", "massless", "spin")
 _EDGE = (
     "between", "kind", "at", "ends", "axis", "axes", "stiffness", "damping", "inertance", "loss_factor",
     "reference_frequency", "branches", "beam", "gear", "after_levelling", "limits", "label",

@@ -8,8 +8,9 @@ Graph attributes
     stiffness_proportional [s]}``, ``{two_ratios: [(ω, ζ), (ω, ζ)]}`` or ``{mode_ratios: ζ}``), ``reference_frequency``
     [rad/s] or None.
 Node attributes
-    ``kind`` ``"body"`` (default) or ``"ground"``; ``mass`` [kg]; ``centre`` (3,) [m]; ``inertia`` (3, 3) [kg m²] about
-    the centre; ``directions``; ``massless``; ``spin`` ``{axis (3,), speed [rad/s], polar_inertia [kg m²]}``.
+    ``kind`` ``"body"`` (default) or ``"ground"``; ``mass`` [kg]; ``centre`` (3,) [m]; ``centre_assumed``, true where
+    none was given; ``inertia`` (3, 3) [kg m²] about the centre; ``directions``; ``massless``; ``spin`` ``{axis (3,),
+    speed [rad/s], polar_inertia [kg m²]}``.
 Edge attributes, the key being the connection's name
     ``between`` (a, b): relative motion is a minus b, which the graph itself forgets; ``kind`` ``"spring"`` (default),
     ``"beam"``, ``"rigid"`` or ``"gear"``; ``at`` (3,) [m], absent for the centre of the first body that is not a
@@ -74,6 +75,8 @@ def _body(body: Body, directions: tuple[str, ...]) -> dict[str, Any]:
         "directions": body.directions or directions,
         "massless": body.massless,
     }
+    if body.centre is None and body.made_of is None:
+        result["centre_assumed"] = True
     if properties.inertia is not None and not body.massless:
         result["inertia"] = properties.inertia
     if body.spin is not None:

@@ -9,6 +9,7 @@ from typing import Any
 import numpy as np
 
 from mdof.description.network_view import Held, NetworkView
+from mdof.description.plausibility import implausible
 from mdof.description.resolved import kind_words
 from mdof.findings import Finding, finding
 
@@ -71,7 +72,8 @@ def summary(graph: Any) -> Summary:
 def network_findings(graph: Any) -> tuple[Finding, ...]:
     """Findings that need no eigenvalues; the graph may be made by hand."""
     view = NetworkView(graph)
-    return (*_unheld(view), *_separate(view), *_idle(view), *_massless(view), *_signs(view), *_gears(view))
+    own = (*_unheld(view), *_separate(view), *_idle(view), *_massless(view), *_signs(view), *_gears(view))
+    return (*own, *implausible(view))
 
 
 def _named(free: list[str], mixed: int) -> str:

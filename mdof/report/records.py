@@ -128,11 +128,30 @@ def check_record(model: Model, checked: CheckedModel) -> dict[str, Any]:
         **envelope("check", model),
         "results": {
             "degrees_of_freedom": totals.degrees_of_freedom,
-            "bodies": [{"name": name, "mass": mass, "centre": list(at)} for name, (mass, at) in checked.bodies.items()],
+            "bodies": [
+                {
+                    "name": name,
+                    "mass": mass,
+                    "centre": list(at),
+                    "inertia": None if (moments := checked.inertias[name]) is None else list(moments),
+                }
+                for name, (mass, at) in checked.bodies.items()
+            ],
             "grounds": list(totals.grounds),
             "total_mass": totals.total_mass,
             "centre_of_gravity": None if totals.centre_of_gravity is None else list(totals.centre_of_gravity),
             "connections": dict(totals.connections),
+            "connection_values": [
+                {
+                    "name": fact.name,
+                    "points": fact.count,
+                    "kind": fact.words,
+                    "between": list(fact.between),
+                    **dict.fromkeys(("stiffness", "damping", "inertance", "loss_factor")),
+                    **dict(fact.values),
+                }
+                for fact in checked.connections
+            ],
             "groups": [list(group) for group in totals.groups],
             "free_directions": list(totals.free_directions),
         },

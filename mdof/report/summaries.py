@@ -1,68 +1,17 @@
-"""Short texts: the check of a model, screening lines, lists of archived runs."""
+"""Short texts: screening lines, lists of archived runs."""
 
 from __future__ import annotations
 
-import math
 from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING, Any
 
 from mdof.report.layout import Grid, Paragraph, styled
-from mdof.report.look import DASH, Look, aligned, frequency, percent, plural
+from mdof.report.look import DASH, Look, frequency, percent, plural
 
 if TYPE_CHECKING:
-    from mdof.report.checking import CheckedModel
     from mdof.report.screening import Screening
 
-__all__ = ["check_text", "run_facts", "run_list", "screening_line"]
-
-
-def check_text(checked: CheckedModel, look: Look) -> str:
-    """Bodies with mass and centre, totals, connections by kind, free directions."""
-    totals = checked.summary
-    facts = Grid()
-    kinds = ", ".join(f"{count} × {kind}" for kind, count in totals.connections.items()) or "none"
-    facts.add(styled("connections", "dim"), f"{sum(totals.connections.values())}: {kinds}")
-    if len(totals.grounds) > 1:
-        facts.add(styled("grounds", "dim"), ", ".join(totals.grounds))
-    free = "; ".join(totals.free_directions)
-    if not free:
-        together = any(item.code == "unheld-body" for item in checked.findings)
-        free = "none; every body is tied to something in each of its directions"
-        free = "no body by itself, but bodies together, as told below" if together else free
-    facts.add(styled("free", "dim"), free)
-    return look.render(*_bodies(checked, look), styled(""), facts)
-
-
-def _bodies(checked: CheckedModel, look: Look) -> list[Grid | Paragraph]:
-    """A table of the bodies; in a narrow terminal two lines a body."""
-    totals = checked.summary
-    names = list(checked.bodies)
-    centres = [at for _, at in checked.bodies.values()]
-    flat = all(at == (0.0, 0.0, 0.0) for at in centres)
-    # A torsional train has no masses but inertias, which its gears keep from being added up.
-    turning = totals.total_mass == 0 and any(checked.inertias.values())
-    amounts = list(checked.inertias.values()) if turning else [mass for mass, _ in checked.bodies.values()]
-    unit = "kg m²" if turning else "kg"
-    if not turning:
-        names.append(f"all {len(names)}")
-        amounts.append(totals.total_mass)
-        centres.append(totals.centre_of_gravity or (math.nan,) * 3)
-    shown = aligned(amounts, 5, 3)
-    head = f"{'inertia' if turning else 'mass'} {unit}"
-    table = Grid()
-    axes = "" if flat else "xyz"
-    table.add(*[styled(text, "bold") for text in ("body", head, *(f"{f'centre {axis} m':>10}" for axis in axes))])
-    for name, amount, at in zip(names, shown, centres, strict=True):
-        places = [f"{DASH if math.isnan(value) else f'{value:z.3f}':>10}" for value in at]
-        style = "bold" if name is names[-1] and not turning else ""
-        table.add(*[styled(text, style) for text in (name, f"{amount:>{len(head)}}", *(() if flat else places))])
-    if look.width is None or table.width <= look.width:
-        return [table]
-    lines: list[Grid | Paragraph] = []
-    for name, amount, at in zip(names, shown, centres, strict=True):
-        place = "" if flat or math.isnan(at[0]) else f" at {', '.join(f'{value:z.3f}' for value in at)} m"
-        lines += [styled(name, "bold"), styled(f"{amount.strip()} {unit}{place}", "", 4)]
-    return lines
+__all__ = ["run_facts", "run_list", "screening_line"]
 
 
 def screening_line(name: str, state: str | None, result: Screening, look: Look) -> str:

@@ -244,10 +244,10 @@ def test_a_sound_model_has_no_findings() -> None:
         units="SI",
         directions=SPACE,
         bodies={
-            "m": INERTIA,
+            "m": {**INERTIA, "centre": [0, 0, 0]},
             "rider": {**INERTIA, "centre": [0, 0, 1]},
-            "n": INERTIA,
-            "turner": {"mass": 1, "inertia": [1, 1, 1], "directions": ["ry", "rx", "rz"]},
+            "n": {**INERTIA, "centre": [0, 0, 0]},
+            "turner": {"mass": 1, "centre": [0, 0, 0], "inertia": [1, 1, 1], "directions": ["ry", "rx", "rz"]},
         },
         connections={
             "s": {

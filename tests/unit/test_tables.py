@@ -14,12 +14,12 @@ from rich.cells import cell_len
 import mdof
 from mdof.findings import finding
 from mdof.modes.mode import DampedModes
+from mdof.report.check_table import check_text
 from mdof.report.checking import check_model
 from mdof.report.layout import fold
 from mdof.report.look import Look, aligned, number, percent
 from mdof.report.records import csv_line, json_line
 from mdof.report.screening import screen
-from mdof.report.summaries import check_text
 from mdof.report.tables import cautions, dissipates_most, findings_block, mode_table, moves_most
 
 MODELS = Path(__file__).parents[2] / "models"
@@ -196,8 +196,17 @@ def check(name: str, width: int | None) -> str:
 def test_a_narrow_check_breaks_no_number() -> None:
     wide, narrow = check("firewater_skid.yaml", 100), check("firewater_skid.yaml", 50)
     assert "frame_aft  1285.0       -0.950       0.000       0.190" in wide
-    assert "frame_aft\n    1285.0 kg at -0.950, 0.000, 0.190 m\n" in narrow
+    assert "frame_aft\n    1285.0 kg at -0.950, 0.000, 0.190 m; inertia\n    250, 390, 560 kg m²\n" in narrow
     assert max(map(cell_len, narrow.splitlines())) <= 50
+
+
+def test_a_check_shows_every_value_with_its_unit() -> None:
+    wide, narrow = check("firewater_skid.yaml", 120), check("firewater_skid.yaml", 60)
+    assert "pot_aft ×2             frame_aft – deck       c x y 4.1, z 6.2 kN s/m\n" in wide
+    assert "k x 4, y 2.2, z 2.6 GN/m and rx 3.6, ry 55, rz 48 MN m/rad; η 0.02\n" in wide
+    assert "pot_aft ×2, frame_aft – deck\n    c x y 4.1, z 6.2 kN s/m\n" in narrow
+    assert "mesh             wheel – pinion       k 600 MN/m; c 4 kN s/m" in check("geared_train.yaml", 100)
+    assert "k x 20 kN/m; 1 series branch" in check("one_relaxation.yaml", 100)
 
 
 def test_a_train_shows_inertias_and_that_it_turns_freely() -> None:
