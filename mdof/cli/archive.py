@@ -3,11 +3,16 @@
 from __future__ import annotations
 
 import sys
+from typing import TYPE_CHECKING
 
 import click
 
 from mdof.cli.options import format_option
 from mdof.cli.session import Session
+from mdof.errors import UsageError
+
+if TYPE_CHECKING:
+    from mdof.archive.store import ArchivedRun
 
 
 @click.group(short_help="List and show archived runs.")
@@ -41,23 +46,37 @@ def list_command(session: Session, folder: str, form: str) -> None:
         session.report(error)
 
 
-@archive.command("show", short_help="One run in full, after verifying its digest.")
-@click.argument("run", type=click.Path())
+@archive.command("show", short_help="Runs in full, after verifying their digests.")
+@click.argument("runs", metavar="RUN...", nargs=-1, required=True, type=click.Path())
 @format_option("table", "json")
 @click.option("--source", is_flag=True, help="Print the model file as it was, and nothing else.")
 @click.pass_obj
-def show_command(session: Session, run: str, form: str, source: bool) -> None:
-    """Show the modes, findings and origin of RUN, after verifying its digest; nothing is computed anew."""
+def show_command(session: Session, runs: tuple[str, ...], form: str, source: bool) -> None:
+    """Show the modes, findings and origin of each RUN, after verifying its digest; nothing is computed anew.
+
+    A damaged file is named on standard error, the others are shown, and the status is 4.
+    """
     session.load("mdof.archive.store")
     from mdof.archive.store import read_run
-    from mdof.errors import UsageError
+    from mdof.errors import MdofError
 
-    found = read_run(run)
+    for index, run in enumerate(runs):
+        try:
+            found = read_run(run)
+            if source and found.source is None:
+                raise UsageError(f"{run}: holds no model file; its model was built in code")
+        except MdofError as error:
+            session.report(error)
+            continue
+        if form == "table" and index:
+            session.data("\n")
+        _show(session, found, form, source=source)
+
+
+def _show(session: Session, found: ArchivedRun, form: str, *, source: bool) -> None:
     header = found.header
     if source:
-        if found.source is None:
-            raise UsageError(f"{run}: holds no model file; its model was built in code")
-        session.data(found.source)
+        session.data(found.source or "")
         return
     if form == "json":
         from mdof.report.records import json_line, run_record

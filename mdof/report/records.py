@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Any
 if TYPE_CHECKING:
     from mdof.description.schema import Model
     from mdof.findings import Finding
-    from mdof.modes.mode import DampedModes, Verification
+    from mdof.modes.mode import DampedModes, Mode, Verification
     from mdof.report.checking import CheckedModel
     from mdof.report.screening import Screening
 
@@ -84,7 +84,7 @@ def modes_record(model: Model, modes: DampedModes) -> dict[str, Any]:
         **envelope("modes", model),
         "degrees_of_freedom": modes.system.degrees_of_freedom,
         "method": modes.method,
-        "modes": [_mode_record(mode, labels) for mode in modes],
+        "modes": [{**_mode_record(mode, labels), **_judged(mode, labels)} for mode in modes],
         "findings": finding_records(modes.findings),
         "verification": verification_record(modes.verification),
     }
@@ -106,6 +106,19 @@ def _mode_record(mode: Any, labels: Sequence[str]) -> dict[str, Any]:
     if mode.fast_shape is not None:
         record["fast_shape"] = _shape(mode.fast_shape, labels)
     return record
+
+
+def _judged(mode: Mode, labels: Sequence[str]) -> dict[str, Any]:
+    """What is known of a mode beside what its archive holds: bounds, the shortcut, and whose energy it is."""
+    energy = mode.energy
+    return {
+        "frequency_bound": _finite(mode.frequency_bound),
+        "time_to_two_percent": _finite(mode.time_to_two_percent),
+        "undamped_frequency_hz": _hertz(mode.undamped_frequency),
+        "shortcut_damping_ratio": _finite(mode.shortcut_damping_ratio),
+        "kinetic_energy": {label: share for label, share in zip(labels, energy.kinetic.tolist(), strict=True) if share},
+        "dissipated_energy": energy.dissipated,
+    }
 
 
 def _shape(shape: Any, labels: Sequence[str]) -> dict[str, list[float]]:

@@ -20,6 +20,9 @@ def screening_line(name: str, state: str | None, result: Screening, look: Look) 
     limit = f"at least {percent(result.least_damping_ratio)}"
     scope = "" if result.below is None else f" below {frequency(result.below)}"
     judged = f"{plural(result.judged, 'mode')}{scope}, {limit}"
+    if not result.judged:
+        # Nothing to fail is no pass: a limit in the wrong unit looks like this.
+        return _verdict(styled("none", "bold yellow"), f"{what}  no mode{scope} to judge, {limit}", look)
     if result.passed:
         return _verdict(styled("pass", "bold green"), f"{what}  {judged}", look)
     failing = "; ".join(

@@ -371,3 +371,38 @@ def test_the_example_script_screens_a_folder(tmp_path: Path) -> None:
     assert lines["firewater_skid.yaml"] == "pass"
     assert len(lines) == len(list(MODELS.glob("*.yaml")))
     assert len((ROOT / "scripts" / "screen_folder.py").read_text().splitlines()) < 30
+
+
+def test_several_runs_are_shown_and_a_damaged_one_is_named(tmp_path: Path) -> None:
+    assert run("modes", str(MODELS / "two_mass.yaml"), "--archive", ".", cwd=tmp_path).returncode == 0
+    assert run("modes", str(MODELS / "one_undamped.yaml"), "--archive", ".", cwd=tmp_path).returncode == 0
+    (tmp_path / "broken.h5").write_bytes(b"no run at all")
+    names = sorted(path.name for path in tmp_path.iterdir())
+    done = run("archive", "show", *names, "--format", "json", cwd=tmp_path)
+    assert done.returncode == 4
+    assert len(objects(done.stdout, "archive-show")) == 2
+    assert "broken.h5" in text(done.stderr)
+
+
+def test_energy_shares_of_the_json_sum_to_one() -> None:
+    (line,) = objects(run("modes", SKID, "--format", "json").stdout, "modes")
+    for mode in line["modes"]:
+        assert sum(mode["kinetic_energy"].values()) == pytest.approx(1, abs=1e-12)
+        assert sum(mode["dissipated_energy"].values()) == pytest.approx(1, abs=1e-12)
+        assert mode["time_to_two_percent"] > 0
+        assert mode["undamped_frequency_hz"] > 0
+    bounce = min(line["modes"], key=lambda mode: abs(mode["natural_frequency_hz"] - 12.04))
+    assert bounce["shortcut_damping_ratio"] == pytest.approx(0.323, abs=0.001)
+
+
+def test_a_screen_that_judges_nothing_is_no_pass() -> None:
+    done = run("screen", SKID, "--below", "1Hz", "--least-damping-ratio", "5%")
+    assert done.returncode == 0
+    assert text(done.stdout).startswith("none")
+    assert "no mode below 1.000 Hz to judge" in text(done.stdout)
+
+
+def test_the_proof_of_the_json_keeps_its_schema() -> None:
+    pytest.importorskip("flint", reason="python-flint is not installed: pip install mdof-damping[certify]")
+    (line,) = objects(run("modes", SKID, "--certify", "--format", "json").stdout, "modes")
+    assert line["proof"]["proven"] == 48
