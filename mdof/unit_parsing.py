@@ -66,8 +66,10 @@ def _joined(unit: str) -> str:
     """The unit without blanks; blanks between two names are refused because `N/m s` has two readings."""
     clean = re.sub(r"\s*([*/^()])\s*", r"\1", unit.strip().translate(_SIGNS).replace("**", "^"))
     if re.search(r"\s", clean):
+        joined = re.sub(r"[ ]+", "*", short(clean))
+        real = all(name in NAMES for name in re.findall(r"[^\W\d_]+", joined))
         raise QuantityError(
-            f"`{short(unit)}` is not a unit", f"join units with * and /, such as {re.sub(r'[ ]+', '*', short(clean))}"
+            f"`{short(unit)}` is not a unit", f"join units with * and /, such as {joined if real else 'N*s/m'}"
         )
     return clean
 

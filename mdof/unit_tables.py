@@ -111,6 +111,7 @@ COMMON: dict[str, tuple[str, Exponents]] = {
 
 # What people write for something that exists here under another name, or that means two things.
 HINTS = {
+    "mn": "mm for a length, or MN for a force",
     "lbs": "lb for a mass or lbf for a force",
     "pound": "lb for a mass or lbf for a force",
     "pounds": "lb for a mass or lbf for a force",

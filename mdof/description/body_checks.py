@@ -58,11 +58,11 @@ def _inertia(body: Body, turns: list[str]) -> Iterator[Trouble]:
     inertia = body.inertia
     if inertia is None:
         if turns:
-            write = "`inertia: 9.6 kg*m^2`" if len(turns) == 1 else "`inertia: [xx, yy, zz]`"
+            needed = ", ".join(f"{_TURNS[turn]}: ..kg*m^2" for turn in turns)
             yield Trouble(
                 (),
                 f"the body turns ({', '.join(turns)}) but has no inertia",
-                f"write {write}, or narrow its `directions`",
+                f"write `inertia: {{{needed}}}` with its own values, or narrow its `directions`",
                 True,
             )
         return

@@ -16,7 +16,7 @@ from mdof.description.readers import DIRECTION_LIST, NAME_RULE, TEXT, name_fault
 from mdof.description.readers import of as quantity_of
 from mdof.description.whole import Criteria, Damping, Load, Watch
 from mdof.description.whole_checks import MOST_TROUBLES, Parts, check_whole
-from mdof.units import DIMENSIONS, QuantityError, factor
+from mdof.units import DIMENSIONS, QuantityError, factor, nearest
 
 __all__ = ["NAMED", "TOP", "Memory", "build"]
 
@@ -64,6 +64,7 @@ def build(raw: Mapping[str, Any], memory: Memory | None = None) -> tuple[dict[st
     """
     parts = Parts()
     memory = memory or Memory()
+    misspelt = False
     for key in raw:
         if len(parts.troubles) >= MOST_TROUBLES:
             break
@@ -79,6 +80,7 @@ def build(raw: Mapping[str, Any], memory: Memory | None = None) -> tuple[dict[st
                 )
             else:
                 parts.troubles.append(unknown_key(key, TOP))
+                misspelt |= nearest(str(key), TOP) in (*NAMED, "units")
         elif raw[key] is None:
             parts.troubles.append(Trouble((key,), "no value is given", f"write one, or remove the key `{key}`"))
     given = {key: value for key, value in raw.items() if value is not None}
@@ -96,7 +98,9 @@ def build(raw: Mapping[str, Any], memory: Memory | None = None) -> tuple[dict[st
         parts.values[name] = None
         if name in given:
             parts.values[name] = _validated(parts, section, given[name], (name,), context, memory)
-    check_whole(parts, written, directions, given)
+    if not misspelt:
+        # Without a section that hides under a wrong name everything that refers to it would be wrong, too.
+        check_whole(parts, written, directions, given)
     if parts.values["criteria"] is None:
         parts.values["criteria"] = Criteria.model_validate({})
     return parts.values, parts.troubles

@@ -14,6 +14,9 @@ from mdof.description.surroundings import Surroundings, unknown_name
 
 __all__ = ["connection_troubles", "property_set_troubles"]
 
+#: What people call the ground.
+_EARTH = frozenset(["base", "deck", "earth", "fixed", "floor", "foundation", "gnd", "slab", "soil", "wall"])
+
 
 def property_set_troubles(values: PropertySet) -> Iterator[Trouble]:
     """Complaints about a property set by itself."""
@@ -67,7 +70,11 @@ def _ends_known(key: str, names: tuple[str, ...], around: Surroundings) -> Itera
     for index, name in enumerate(names):
         if name not in around.bodies and name not in around.grounds:
             unknown = True
-            yield unknown_name((key, index), "body or support", name, known)
+            trouble = unknown_name((key, index), "body or support", name, known)
+            if name.casefold() in _EARTH:
+                way = "what never moves is `ground`; what moves belongs under `bodies` or `supports`"
+                trouble = Trouble(trouble.path, trouble.message, way)
+            yield trouble
     if not unknown and names[0] == names[1]:
         yield Trouble((key,), f"`{names[0]}` is connected to itself", "name two different ends")
     elif not unknown and all(name in around.grounds for name in names):

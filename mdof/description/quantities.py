@@ -195,12 +195,24 @@ def _written(raw: Any) -> str:
     return raw if isinstance(raw, str) else f"{raw}"
 
 
+#: What people call a damping ratio.
+_RATIOS = ("damping_ratio", "zeta", "ratio")
+
+
 def unknown_key(key: Any, known: Iterable[str], what: str = "key") -> Trouble:
     """Complaint about a key that nothing goes by, with the nearest one that is known."""
     choices = list(known)
     close = nearest(str(key), choices)
     listed = f"the {what}s here are {', '.join(choices)}"
     expected = f"did you mean `{close}`? {listed}" if close else listed
+    name, colon, rest = str(key).partition(":")
+    if colon and name in choices:
+        expected = f"put a blank after the colon: `{name}: {rest.strip()[:30]}`"
+    elif key in _RATIOS and "loss_factor" in choices:
+        expected = (
+            "one connection takes `loss_factor`, twice the damping ratio it alone would give; a ratio of the whole "
+            "machine belongs under `damping`"
+        )
     return Trouble((str(key),), f"unknown {what} `{str(key)[:60]}`", expected, True)
 
 

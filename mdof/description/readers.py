@@ -54,8 +54,24 @@ def _triple(raw: Any, what: str) -> Sequence[Any]:
         raw = raw.tolist()
     if not isinstance(raw, list | tuple) or len(raw) != 3:
         count = f"{len(raw)} values" if isinstance(raw, list | tuple) else kind_of(raw)
-        raise refuse(f"{count} where three belong", f"write {what}")
+        comma = isinstance(raw, list | tuple) and len(raw) > 3
+        raise refuse(
+            f"{count} where three belong", f"write {what}" + (", with decimal points and not commas" if comma else "")
+        )
     return raw
+
+
+def _lengths(raw: Sequence[Any], dimension: str, context: Context) -> tuple[Quantity, ...]:
+    """Three quantities; what several of them lack is said once."""
+    bare = [entry for entry in raw if isinstance(entry, int | float) and not isinstance(entry, bool)]
+    if len(bare) > 1 and dimension not in context.units and "" not in context.units:
+        unit = DIMENSIONS[dimension].unit
+        shown = ", ".join(f"{entry:g} {unit}" if entry in bare else str(entry)[:20] for entry in raw)
+        raise refuse(
+            f"{len(bare)} of three numbers have no unit and `units` does not cover {dimension}",
+            f"write [{shown}], or add `{dimension}: {unit}` to `units` (`units: SI` covers all)",
+        )
+    return each(raw, lambda entry: read_quantity(entry, (dimension,), context))
 
 
 def each(raw: Sequence[Any], function: Callable[[Any], Any]) -> tuple[Any, ...]:
@@ -77,7 +93,7 @@ def triple_of(dimension: str, what: str) -> Reads:
 
     def function(raw: Any, info: Any) -> tuple[Quantity, ...]:
         context = context_of(info)
-        return each(_triple(raw, what), lambda entry: read_quantity(entry, (dimension,), context))
+        return _lengths(_triple(raw, what), dimension, context)
 
     schema = {"type": "array", "items": {"x-quantity": [dimension]}, "minItems": 3, "maxItems": 3}
     return Reads(function, schema)
@@ -89,7 +105,7 @@ POINT = triple_of("length", POINT_WORDS)
 
 def read_point(raw: Any, context: Context) -> tuple[Quantity, ...]:
     """A point in space, three lengths."""
-    return each(_triple(raw, POINT_WORDS), lambda entry: read_quantity(entry, ("length",), context))
+    return _lengths(_triple(raw, POINT_WORDS), "length", context)
 
 
 def _vector(raw: Any, info: Any) -> tuple[float, float, float]:

@@ -64,8 +64,9 @@ def check_whole(
                 True,
             )
         )
+    own = list(parts.troubles)
     for name, body in bodies.items():
-        if body is not None:
+        if body is not None and not any(trouble.path[:2] == ("bodies", name) for trouble in own):
             parts.troubles.extend(
                 trouble.below(("bodies", name)) for trouble in body_troubles(body, body.directions or directions)
             )

@@ -66,7 +66,14 @@ def test_the_models_that_faults_are_put_into_are_good(tmp_path: Path, text: str)
     [
         (changed("1 kN/mm", "1e5x N/m"), "5:46: connections.mount.stiffness:", "not a unit"),
         (changed("1 kN/mm", "1 kN*mm"), "5:46: connections.mount.stiffness:", "N/m"),
-        (changed("1 kN/mm", "1 kN/mn"), "5:46: connections.mount.stiffness:", "not a unit"),
+        (changed("1 kN/mm", "1 kN/mn"), "5:46: connections.mount.stiffness:", "write mm for a length"),
+        (changed("1 kN/mm", "1 kN s/m"), "5:46: connections.mount.stiffness:", "such as kN*s/m"),
+        (changed("ground", "floor"), "5:", "what never moves is `ground`"),
+        (changed("fan: 100 kg", "fan: {mass:100 kg}"), "3:", "put a blank after the colon: `mass: 100 kg`"),
+        (changed("damping: 50 N*s/m", "damping_ratio: 5 %"), "5:", "`loss_factor`, twice the damping ratio"),
+        (spatial("[0 m, 0 m, 1 m]", "[0 m, 0 m, 1,5 m]"), "3:", "decimal points and not commas"),
+        (spatial("at: [0 m, 0 m, 0 m]", "at: [0, 0, 1 m]"), "5:", "write [0 m, 0 m, 1 m], or add `length: m`"),
+        (spatial(", inertia: [4 kg*m^2, 5 kg*m^2, 6 kg*m^2]", ""), "3:", "{xx: ..kg*m^2, yy: ..kg*m^2, zz: ..kg*m^2}"),
         (changed("1 kN/mm", ".nan"), "5:46: connections.mount.stiffness:", "finite"),
         (changed("1 kN/mm", ".inf"), "5:46: connections.mount.stiffness:", "finite"),
         (changed("1 kN/mm", "010"), "5:46: connections.mount.stiffness:", "octal"),
@@ -168,6 +175,13 @@ def test_all_faults_of_a_file_come_at_once(tmp_path: Path) -> None:
         assert path in said
     # The offending line is shown.
     assert "mount: {between: [fan, ground], stiffness: 1 kN/kg" in said
+
+
+def test_a_misspelt_section_is_the_only_complaint(tmp_path: Path) -> None:
+    (tmp_path / "fan.yaml").write_text(changed("bodies", "bodys"))
+    said = modes(tmp_path, "fan.yaml")
+    assert "did you mean `bodies`?" in said
+    assert said.count("fan.yaml:") == 1
 
 
 @pytest.mark.parametrize(("name", "words"), [("folder.yaml", "folder"), ("fam.yaml", "fan.yaml")])
