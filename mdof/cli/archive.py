@@ -84,6 +84,7 @@ def _show(session: Session, found: ArchivedRun, form: str, *, source: bool) -> N
         session.data(json_line(run_record(found)))
     else:
         from mdof.report import summaries, tables
+        from mdof.report.standing import least_damped_line
 
         look = session.look()
         session.data(
@@ -91,7 +92,9 @@ def _show(session: Session, found: ArchivedRun, form: str, *, source: bool) -> N
             + "\n"
             + tables.mode_table(found.modes, found.bodies, found.directions, look)
             + "\n"
-            + tables.provenance(header.method, header.loss_reference, found.verification, look)
+            + tables.provenance(
+                header.method, header.loss_reference, found.verification, look, least_damped_line(found.modes)
+            )
             + summaries.run_facts(header, found.versions, look)
         )
     if found.findings:

@@ -30,6 +30,9 @@ def manual(ctx: click.Context, topic: str | None) -> None:
         )
         return
     if topic not in pages:
+        begun = [name for name in pages if name.startswith(topic)]
+        topic = begun[0] if len(begun) == 1 else topic
+    if topic not in pages:
         raise click.UsageError(f"there is no page about {topic!r}{nearest(topic, list(pages))}", ctx)
     from mdof.report.prose import page_text
 

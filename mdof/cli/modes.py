@@ -111,6 +111,7 @@ def _show(
         session.data(b"".join(records.csv_line(row) for row in [*rows, *records.mode_csv_rows(model, result)]))
     else:
         from mdof.report import tables
+        from mdof.report.standing import criteria_line, least_damped_line
 
         look, system = session.look(), result.system
         session.data(
@@ -120,7 +121,11 @@ def _show(
             + tables.mode_table(result, system.coordinate_bodies, system.coordinate_directions, look)
             + "\n"
             + tables.provenance(
-                result.method, result.loss_reference, records.verification_record(result.verification), look
+                result.method,
+                result.loss_reference,
+                records.verification_record(result.verification),
+                look,
+                [*least_damped_line(result), *criteria_line(result, model.criteria)],
             )
         )
     if proof is not None:

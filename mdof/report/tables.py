@@ -112,11 +112,19 @@ def heading(title: str, file: str | None, state: str | None, degrees_of_freedom:
     return look.render(styled(title, "bold"), styled(" · ".join(facts), "dim"))
 
 
-def provenance(method: str, loss_reference: str, verification: dict[str, Any], look: Look) -> str:
-    """How the numbers came about: method, loss-factor reference, verification."""
+def provenance(
+    method: str,
+    loss_reference: str,
+    verification: dict[str, Any],
+    look: Look,
+    facts: Sequence[tuple[str, str]] = (),
+) -> str:
+    """What stands out, in ``facts``; then how the numbers came about: method, loss-factor reference, verification."""
     found, expected = verification["eigenvalues_found"], verification["eigenvalues_expected"]
     residual = number(verification["largest_scaled_residual"], 2)
     table = Grid()
+    for name, fact in facts:
+        table.add(styled(name, "dim"), fact)
     table.add(styled("solved by", "dim"), method)
     if loss_reference:
         table.add(styled("loss factors", "dim"), loss_reference)

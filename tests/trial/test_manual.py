@@ -6,6 +6,7 @@ import json
 import re
 from importlib import import_module
 from pathlib import Path
+from typing import Any
 
 import click
 import pytest
@@ -137,3 +138,21 @@ def test_the_model_of_the_manual_can_be_read(tmp_path: Path) -> None:
     path = tmp_path / "example.yaml"
     path.write_text(re.findall(r"```yaml\n(.*?)```", page, flags=re.DOTALL)[0], encoding="utf-8")
     assert main(["check", str(path)]) == 0
+
+
+def test_the_python_page_runs(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.chdir(Path(__file__).parents[2])
+    page = (Path(mdof.__file__).parent / "manual" / "python.md").read_text(encoding="utf-8")
+    snippets = re.findall(r"```python\n(.*?)```", page, flags=re.DOTALL)
+    assert len(snippets) == 5
+    space: dict[str, Any] = {}
+    for snippet in snippets:
+        exec(compile(snippet, "python.md", "exec"), space)
+    assert space["given"].size == 2
+    assert len(space["lowest"]) == 6
+    assert space["study"].damping_ratios.shape[0] == 4
+
+
+def test_the_beginning_of_a_name_finds_its_page(capfd: pytest.CaptureFixture[str]) -> None:
+    assert main(["manual", "pyth"]) == 0
+    assert "Python: models" in capfd.readouterr().out
