@@ -55,7 +55,8 @@ def draw_shapes(
     for place in axes[len(modes) :]:
         place.set_axis_off()
     how = (
-        "outlines of the centre and the connected points of each body; grey: at rest, blue: moved by the real part"
+        "outlines of bodies; grey: at rest, blue: moved by the real part, orange: path of the centre, "
+        "triangles: ties to the ground"
         if spatial
         else "real part; hollow: imaginary part"
     )
@@ -90,10 +91,12 @@ class _Skeleton:
     ----------
     centres : body to its centre [m].
     arms : body to the points where something is connected to it, shape (n, 3) [m].
+    ties : points of the connections to grounds, shape (n, 3) [m].
     """
 
     centres: dict[str, Vector]
     arms: dict[str, Vector]
+    ties: Vector
 
     @property
     def points(self) -> Vector:
@@ -109,6 +112,7 @@ def _skeleton(model: Model, bodies: Sequence[str]) -> _Skeleton:
     graph = mdof.network(model)
     centres = {body: np.asarray(graph.nodes[body].get("centre", np.zeros(3)), float) for body in dict.fromkeys(bodies)}
     arms: dict[str, list[Vector]] = {body: [] for body in centres}
+    ties: list[Vector] = []
     for _, _, edge in graph.edges(data=True):
         between = edge["between"]
         at = edge.get("at")
@@ -117,8 +121,12 @@ def _skeleton(model: Model, bodies: Sequence[str]) -> _Skeleton:
         for name, point in zip(between, edge.get("ends") or (at, at), strict=True):
             if name in arms:
                 arms[name].append(np.asarray(point, float))
+            elif graph.nodes[name].get("kind") == "ground":
+                ties.append(np.asarray(point, float))
     return _Skeleton(
-        centres=centres, arms={body: np.unique(np.reshape(points, (-1, 3)), axis=0) for body, points in arms.items()}
+        centres=centres,
+        arms={body: np.unique(np.reshape(points, (-1, 3)), axis=0) for body, points in arms.items()},
+        ties=np.unique(np.reshape(ties, (-1, 3)), axis=0),
     )
 
 
@@ -176,6 +184,7 @@ def _drawing(axes: Axes, mode: Mode, skeleton: _Skeleton) -> None:
     for name, first, second, offset in views:
         corner = (low[first] + offset[0] - margin, high[second] + offset[1] + 0.7 * margin)
         axes.annotate(name, corner, fontsize=6, color=_PALE, ha="left", va="center", style="italic")
+        axes.plot(*(skeleton.ties[:, [first, second]] + offset).T, "^", color=_INK, markersize=2.6, zorder=1)
         still, moved, paths = [], [], []
         for body, centre in centres.items():
             rest = np.vstack([centre, arms[body]])[:, [first, second]] + offset
