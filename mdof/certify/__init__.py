@@ -23,7 +23,7 @@ __all__ = ["Certificate", "ModeProof", "Verdict", "certify", "require_flint"]
 def require_flint() -> None:
     """Raise a UsageError where python-flint is not installed."""
     if find_spec("flint") is None:
-        raise UsageError("proofs need python-flint, which is not installed; do `pip install mdof-damping[certify]`")
+        raise UsageError("proofs need python-flint, which is not installed; do `pip install python-flint`")
 
 
 def certify(

@@ -11,7 +11,7 @@ import pytest
 
 import mdof
 
-pytest.importorskip("flint", reason="python-flint is not installed: pip install mdof-damping[certify]")
+pytest.importorskip("flint", reason="python-flint is not installed: pip install python-flint")
 sys.path.insert(0, str(Path(__file__).parents[2] / "scripts"))
 import bench_accuracy
 from accuracy_cases import FAMILIES

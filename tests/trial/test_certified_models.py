@@ -14,7 +14,7 @@ import pytest
 
 import mdof
 
-flint = pytest.importorskip("flint", reason="python-flint is not installed: pip install mdof-damping[certify]")
+flint = pytest.importorskip("flint", reason="python-flint is not installed: pip install python-flint")
 MODELS = Path(__file__).parents[2] / "models"
 DIGITS = 40
 

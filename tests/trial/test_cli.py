@@ -403,6 +403,6 @@ def test_a_screen_that_judges_nothing_is_no_pass() -> None:
 
 
 def test_the_proof_of_the_json_keeps_its_schema() -> None:
-    pytest.importorskip("flint", reason="python-flint is not installed: pip install mdof-damping[certify]")
+    pytest.importorskip("flint", reason="python-flint is not installed: pip install python-flint")
     (line,) = objects(run("modes", SKID, "--certify", "--format", "json").stdout, "modes")
     assert line["proof"]["proven"] == 48

@@ -70,7 +70,7 @@ def test_without_python_flint_it_is_wrong_usage(capfd: Captured, monkeypatch: py
     assert run(["modes", TWO, "--certify"]) == 2
     captured = capfd.readouterr()
     assert captured.out == ""
-    assert "pip install mdof-damping[certify]" in captured.err
+    assert "pip install python-flint" in captured.err
 
 
 @pytest.mark.parametrize("path", sorted(MODELS.glob("*.yaml")), ids=lambda path: path.stem)
