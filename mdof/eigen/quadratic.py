@@ -18,7 +18,7 @@ from mdof.eigen.choose import Solved, solve_block
 from mdof.eigen.clusters import average_clusters
 from mdof.eigen.oscillators import oscillator_bounds
 from mdof.eigen.refine import inverse_step, refine, settled
-from mdof.eigen.verify import judge, measure
+from mdof.eigen.verify import judge, lengths, measure
 from mdof.errors import UnverifiedError
 
 if TYPE_CHECKING:
@@ -163,7 +163,7 @@ def _describe(problem: NormalisedProblem, solved: list[Solved]) -> str:
 
 
 def _normalised(vectors: NDArray[np.complex128]) -> NDArray[np.complex128]:
-    length = np.linalg.norm(vectors, axis=0)
+    length = lengths(vectors)
     if np.any(length == 0):
         raise UnverifiedError("an eigenvector vanished", "look for values near the ends of the number range")
     return np.asarray(vectors / length, dtype=np.complex128)

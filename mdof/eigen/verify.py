@@ -19,7 +19,17 @@ if TYPE_CHECKING:
 
     from mdof.eigen.reduce import NormalisedProblem
 
-__all__ = ["GATE", "Judgement", "Measured", "check_completeness", "damping_times", "judge", "measure", "real_times"]
+__all__ = [
+    "GATE",
+    "Judgement",
+    "Measured",
+    "check_completeness",
+    "damping_times",
+    "judge",
+    "lengths",
+    "measure",
+    "real_times",
+]
 
 _EPS = float(np.finfo(np.float64).eps)
 #: Largest accepted backward error over n times the unit roundoff, in the manner of LAPACK's test programs.
@@ -63,6 +73,13 @@ def damping_times(
     if reference is not None and len(problem.loss_rows):
         product = product + problem.loss_rows.T @ ((problem.loss_rows @ vectors) / reference)
     return product
+
+
+def lengths(vectors: NDArray[np.complex128]) -> NDArray[np.float64]:
+    """2-norm of every column, without a temporary of magnitudes."""
+    parts = np.ascontiguousarray(vectors).view(np.float64)
+    squares = np.einsum("ij,ij->j", parts, parts)
+    return np.asarray(np.sqrt(squares[0::2] + squares[1::2]))
 
 
 def real_times(matrix: NDArray[np.float64], vectors: NDArray[np.complex128]) -> NDArray[np.complex128]:
@@ -149,10 +166,10 @@ def measure(
     numerator = _dots(other, rest)
     stiffness_norm, damping_norm = _norms(problem, reference)
     size = np.abs(values)
-    scale = (size**2 + size * damping_norm + stiffness_norm) * np.linalg.norm(vectors, axis=0)
+    scale = (size**2 + size * damping_norm + stiffness_norm) * lengths(vectors)
     with np.errstate(divide="ignore", invalid="ignore"):
         step = np.where(slope != 0, -numerator / slope, 0.0)
-        backward = np.where(scale > 0, np.linalg.norm(rest, axis=0) / scale, 0.0)
+        backward = np.where(scale > 0, lengths(rest) / scale, 0.0)
     return Measured(rest=rest, numerator=numerator, slope=slope, backward=backward, step=step)
 
 
@@ -214,25 +231,27 @@ def _second_order(
     Free motions have the exact root 0, double and of slope 0 where nothing damps them; they count as
     1 / (|λ_i|² z_kᵀMz_k). Large problems take |z_k| |r_i| for the products, which costs less and is never smaller.
     """
-    if len(values) > _MANY:
-        reach = np.linalg.norm(other, axis=0) ** 2
-        seen = reach[:, None] * (np.linalg.norm(rest, axis=0) ** 2)[None, :]
-        seen_conjugate = seen
-    else:
-        seen = np.abs(other.T @ rest) ** 2
-        seen_conjugate = np.abs(other.conj().T @ rest) ** 2
-    gap = np.abs(values[:, None] - values[None, :])
-    gap_conjugate = np.abs(values.conj()[:, None] - values[None, :])
+    along = (values.real[:, None] - values.real[None, :]) ** 2
+    gap = np.sqrt(along + (values.imag[:, None] - values.imag[None, :]) ** 2)
+    gap_conjugate = np.sqrt(along + (values.imag[:, None] + values.imag[None, :]) ** 2)
     np.fill_diagonal(gap, np.inf)
     gap_conjugate[np.diag_indices(len(values))] = np.where(values.imag != 0, np.diag(gap_conjugate), np.inf)
     free = values == 0
+    size = np.abs(slope)
     with np.errstate(divide="ignore", invalid="ignore"):
-        pull = np.abs(slope)[:, None] * gap
-        modal_mass = np.linalg.norm(other[:heavy, free], axis=0) ** 2
-        pull[free] = np.maximum(pull[free], modal_mass[:, None] * gap[free] ** 2)
-        pull_conjugate = np.abs(slope)[:, None] * gap_conjugate
-        pull_conjugate[free] = np.inf
-        total = (seen / pull + seen_conjugate / pull_conjugate).sum(axis=0) / np.abs(slope)
+        # Row k, column i: what mode k adds to root i for |z_kᵀ r_i| = 1.
+        pull, pull_conjugate, weight = 1.0 / gap, 1.0 / gap_conjugate, 1.0 / size
+        if free.any():
+            modal_mass = lengths(other[:heavy, free]) ** 2
+            pull[free] = 1.0 / np.maximum(size[free, None] * gap[free], modal_mass[:, None] * gap[free] ** 2)
+            pull_conjugate[free] = 0.0
+            weight[free] = 1.0
+        if len(values) > _MANY:
+            total = lengths(rest) ** 2 * ((lengths(other) ** 2 * weight) @ (pull + pull_conjugate))
+        else:
+            seen, seen_conjugate = np.abs(other.T @ rest) ** 2, np.abs(other.conj().T @ rest) ** 2
+            total = (weight[:, None] * (seen * pull + seen_conjugate * pull_conjugate)).sum(axis=0)
+        total = total / size
     floor = np.finfo(np.float64).tiny
     return np.where(np.isfinite(total), total, 0.0) + floor
 

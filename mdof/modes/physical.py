@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from mdof.eigen.verify import real_times
+from mdof.eigen.verify import lengths, real_times
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -94,10 +94,10 @@ class PhysicalResidual:
         drag *= values
         inertia += drag
         inertia += elastic
-        residual = _lengths(inertia)
+        residual = lengths(inertia)
         size = np.abs(values)
         mass, damping, stiffness = self.norms
-        scale = (size**2 * mass + size * damping + stiffness) * _lengths(vectors)
+        scale = (size**2 * mass + size * damping + stiffness) * lengths(vectors)
         return np.asarray(np.divide(residual, scale, out=np.zeros(len(values)), where=scale > 0))
 
     def uncertainty(
@@ -225,12 +225,6 @@ def _times(matrix: Any, vectors: NDArray[np.complex128]) -> NDArray[np.complex12
 def _dots(first: Any, second: Any) -> Any:
     """Σ first · second of every column, unconjugated."""
     return np.einsum("ij,ij->j", first, second)
-
-
-def _lengths(vectors: NDArray[np.complex128]) -> NDArray[np.float64]:
-    """2-norm of every column, without a temporary of magnitudes."""
-    parts = np.ascontiguousarray(vectors).view(np.float64).reshape(len(vectors), -1, 2)
-    return np.asarray(np.sqrt(np.einsum("ijk,ijk->j", parts, parts)))
 
 
 def _longest(matrix: Any) -> float:

@@ -18,7 +18,7 @@ from mdof.eigen.blocks import rotate_equal
 from mdof.eigen.quadratic import solve_complete
 from mdof.eigen.reduce import NormalisedProblem, normalise
 from mdof.eigen.threads import suited_threads
-from mdof.eigen.verify import GATE
+from mdof.eigen.verify import GATE, lengths
 from mdof.errors import UnverifiedError, UsageError
 from mdof.modes.pairing import pair_roots
 from mdof.modes.regime import Regime, classify
@@ -143,7 +143,7 @@ def _solved(problem: NormalisedProblem, varied: NDArray[np.bool_], share: NDArra
         ratios=_numbers([entry.damping_ratio for entry in numbers]),
         bounds=_numbers([entry.frequency_bound for entry in numbers]),
         regimes=[entry.regime for entry in numbers],
-        shapes=pairing.vectors[: problem.heavy, slow_index],
+        shapes=_unit_rows(pairing.vectors[: problem.heavy, slow_index]),
         method=roots.method,
     )
 
@@ -159,7 +159,7 @@ def _followed(damper: str, values: NDArray[np.float64], found: list[_At], heavy:
     place = np.full(count, -1)
     place[: len(first)] = first
     likeness = np.where(place >= 0, 1.0, np.nan)
-    before: NDArray[np.complex128] = np.zeros((heavy, count), dtype=np.complex128)
+    before: NDArray[np.complex128] = np.zeros((count, heavy), dtype=np.complex128)
     last = np.zeros(count, dtype=np.complex128)
     for row, at in enumerate(found):
         if row:
@@ -170,7 +170,7 @@ def _followed(damper: str, values: NDArray[np.float64], found: list[_At], heavy:
         bounds[row, kept], roots[row, kept] = at.bounds[mode], at.roots[mode]
         confidence[row] = likeness
         regimes.append(tuple(at.regimes[index] if index >= 0 else None for index in place))
-        before[:, kept], last[kept] = at.shapes[:, mode], at.roots[mode]
+        before[kept], last[kept] = at.shapes[mode], at.roots[mode]
     return DamperSweep(
         damper=damper,
         values=_fixed(values),
@@ -191,7 +191,7 @@ def _matched(
 
     Most modes hardly move and are found among their neighbours; only the others are assigned by all their shapes.
     """
-    count, modes = before.shape[1], len(at.roots)
+    count, modes = len(before), len(at.roots)
     order = np.argsort(np.abs(at.roots), kind="stable")
     position = np.searchsorted(np.abs(at.roots[order]), np.abs(np.nan_to_num(last)))
     place, confidence = np.full(count, -1), np.full(count, np.nan)
@@ -199,7 +199,7 @@ def _matched(
     for shift in (0, -1, 1, -2, 2):
         open_ = np.nonzero(best < _PLAIN)[0]
         candidate = order[np.clip(position[open_] + shift, 0, modes - 1)]
-        like = _alike(before[:, open_], at.shapes[:, candidate])
+        like = _alike(before if len(open_) == count else before[open_], at.shapes[candidate])
         better = like > best[open_]
         place[open_[better]], best[open_[better]] = candidate[better], like[better]
     plain = (best >= _PLAIN) & (np.bincount(place[place >= 0], minlength=modes)[place] == 1)
@@ -210,21 +210,22 @@ def _matched(
     if len(branches) and len(left):
         from scipy.optimize import linear_sum_assignment
 
-        cross = np.abs(before[:, branches].conj().T @ at.shapes[:, left]) ** 2
-        own = np.outer(
-            np.sum(np.abs(before[:, branches]) ** 2, axis=0), np.sum(np.abs(at.shapes[:, left]) ** 2, axis=0)
-        )
-        likeness = np.divide(cross, own, out=np.zeros_like(cross), where=own > 0)
+        likeness = np.abs(before[branches].conj() @ at.shapes[left].T) ** 2
         rows, columns = linear_sum_assignment(likeness, maximize=True)
         place[branches[rows]], confidence[branches[rows]] = left[columns], likeness[rows, columns]
     return place, confidence
 
 
+def _unit_rows(shapes: NDArray[np.complex128]) -> NDArray[np.complex128]:
+    """Mass-normalised shapes as rows of length 1; rows are what matching takes out and compares."""
+    rows = np.ascontiguousarray(shapes.T)
+    length = lengths(shapes)
+    return np.asarray(rows / np.where(length > 0, length, 1.0)[:, None])
+
+
 def _alike(first: NDArray[np.complex128], second: NDArray[np.complex128]) -> NDArray[np.float64]:
-    """Modal assurance criterion of mass-normalised shapes, column by column."""
-    cross = np.abs(np.einsum("ij,ij->j", first.conj(), second)) ** 2
-    own = np.sum(np.abs(first) ** 2, axis=0) * np.sum(np.abs(second) ** 2, axis=0)
-    return np.asarray(np.divide(cross, own, out=np.zeros(len(cross)), where=own > 0))
+    """Modal assurance criterion of unit shapes, row by row."""
+    return np.asarray(np.abs(np.vecdot(first, second)) ** 2)
 
 
 def _numbers(values: list[float | None]) -> NDArray[np.float64]:
