@@ -18,7 +18,7 @@ from mdof.eigen.choose import Solved, solve_block
 from mdof.eigen.clusters import average_clusters
 from mdof.eigen.oscillators import oscillator_bounds
 from mdof.eigen.refine import inverse_step, refine, settled
-from mdof.eigen.verify import judge, lengths, measure
+from mdof.eigen.verify import Measured, judge, lengths, measure
 from mdof.errors import UnverifiedError
 
 if TYPE_CHECKING:
@@ -111,15 +111,7 @@ def solve_complete(problem: NormalisedProblem, method: str = "auto") -> Roots:
     which = np.concatenate(block_of)
     seen = measure(problem, roots, z, left)
     if not settled(seen, roots, size):
-        before = seen.backward
-        new, new_z, new_left = refine(problem, roots, z, left)
-        # Near a double root a step moves the root away from its vector; such roots stay as they came.
-        worse = measure(problem, new, new_z, new_left).backward > np.maximum(before, size * _EPS)
-        roots, z = np.where(worse, roots, new), np.where(worse, z, new_z)
-        left = None if left is None or new_left is None else np.where(worse, left, new_left)
-        for index in np.nonzero(worse)[0]:
-            z[:, index] = inverse_step(problem, roots[index], z[:, index], transposed=False)
-        seen = measure(problem, roots, z, left)
+        roots, z, left, seen = _refined(problem, roots, z, left, seen)
     judgement = judge(problem, roots, z, left, seen=seen)
     mates = np.concatenate(partner)
     bounds = oscillator_bounds(problem, roots, judgement.bound, which, blocks)
@@ -142,6 +134,43 @@ def solve_complete(problem: NormalisedProblem, method: str = "auto") -> Roots:
         count=sum(part.count for part in found),
         method=_describe(problem, solved),
     )
+
+
+def _refined(
+    problem: NormalisedProblem,
+    roots: NDArray[np.complex128],
+    z: NDArray[np.complex128],
+    left: NDArray[np.complex128] | None,
+    seen: Measured,
+) -> tuple[NDArray[np.complex128], NDArray[np.complex128], NDArray[np.complex128] | None, Measured]:
+    """Refined pairs and what is seen of them; only pairs that change are looked at again."""
+    new, new_z, new_left, index = refine(problem, roots, z, left, seen)
+    if not len(index):
+        return roots, z, left, seen
+
+    def at(vectors: NDArray[np.complex128] | None, which: NDArray[np.int64]) -> NDArray[np.complex128] | None:
+        return None if vectors is None else vectors[:, which]
+
+    again = measure(problem, new[index], new_z[:, index], at(new_left, index))
+    # Near a double root a step moves the root away from its vector; such roots stay as they came.
+    worse = again.backward > np.maximum(seen.backward[index], len(z) * _EPS)
+    back = index[worse]
+    if len(back):
+        new[back], new_z[:, back] = roots[back], z[:, back]
+        if left is not None and new_left is not None:
+            new_left[:, back] = left[:, back]
+        for which in back:
+            new_z[:, which] = inverse_step(problem, new[which], new_z[:, which], transposed=False)
+        again = measure(problem, new[index], new_z[:, index], at(new_left, index))
+    for whole, part in (
+        (seen.numerator, again.numerator),
+        (seen.slope, again.slope),
+        (seen.backward, again.backward),
+        (seen.step, again.step),
+    ):
+        whole[index] = part
+    seen.rest[:, index] = again.rest
+    return new, new_z, new_left, seen
 
 
 def _describe(problem: NormalisedProblem, solved: list[Solved]) -> str:

@@ -17,6 +17,7 @@ __all__ = ["inverse_step", "refine", "settled"]
 
 _EPS = float(np.finfo(np.float64).eps)
 _REFINEMENTS = 6
+_FEW_ROUNDINGS = 4
 #: Cosine from which two shapes are those of roots about to collide.
 _ALIKE = 1 - 1e-6
 
@@ -26,23 +27,39 @@ def refine(
     values: NDArray[np.complex128],
     vectors: NDArray[np.complex128],
     left: NDArray[np.complex128] | None,
-) -> tuple[NDArray[np.complex128], NDArray[np.complex128], NDArray[np.complex128] | None]:
+    seen: Measured,
+) -> tuple[NDArray[np.complex128], NDArray[np.complex128], NDArray[np.complex128] | None, NDArray[np.int64]]:
     """Inverse iteration for vectors that leave more than rounding, then two-sided Rayleigh steps.
 
     The steps recover small roots beside large ones; roots about to collide keep their values.
+
+    Parameters
+    ----------
+    seen : Measured
+        What :func:`mdof.eigen.verify.measure` said of these pairs.
+
+    Returns
+    -------
+    values, vectors, left, and the indices of the pairs that changed
     """
     values, vectors = values.copy(), vectors.copy()
     left = None if left is None else left.copy()
     active = np.nonzero(values != 0)[0]
+    step, backward = seen.step[active], seen.backward[active]
+    changed = np.zeros(len(values), dtype=bool)
     last = np.full(len(values), np.inf)
     for turn in range(_REFINEMENTS):
-        seen = measure(problem, values[active], vectors[:, active], None if left is None else left[:, active])
+        if turn:
+            now = measure(problem, values[active], vectors[:, active], None if left is None else left[:, active])
+            step, backward = now.step, now.backward
         old = values[active]
-        wanted = np.abs(seen.step) > 0.5 * _EPS * np.abs(old)
-        wanted[wanted] &= np.abs(seen.step[wanted]) < 0.05 * _gaps(values, active[wanted])
-        moved = old + np.where(wanted, seen.step, 0.0)
+        # What is right but for a few roundings is left alone at first; what moves once is brought to the last digit.
+        wanted = np.abs(step) > (0.5 if turn else _FEW_ROUNDINGS) * _EPS * np.abs(old)
+        wanted[wanted] &= np.abs(step[wanted]) < 0.05 * _gaps(values, active[wanted])
+        moved = old + np.where(wanted, step, 0.0)
         values[active] = np.where(old.imag == 0, moved.real, moved)
-        rough = seen.backward > 0.5 * len(vectors) * _EPS
+        rough = backward > 0.5 * len(vectors) * _EPS
+        changed[active[wanted | rough]] = True
         if turn == _REFINEMENTS - 1:
             break
         for index in active[rough]:
@@ -50,19 +67,19 @@ def refine(
             if left is not None:
                 left[:, index] = inverse_step(problem, values[index], left[:, index], transposed=True)
         # Steps of a few roundings are as good as none, and steps that no longer shrink are rounding themselves.
-        length = np.abs(seen.step)
+        length = np.abs(step)
         going = wanted & (length > 16 * _EPS * np.abs(old)) & (length < 0.1 * last[active])
         last[active] = length
         active = active[rough | going]
         if not len(active):
             break
-    return values, vectors, left
+    return values, vectors, left, np.nonzero(changed)[0]
 
 
 def settled(seen: Measured, values: NDArray[np.complex128], size: int) -> bool:
     """True where no vector is rough and no step longer than a few roundings."""
     moving = values != 0
-    long = np.abs(seen.step) > 4 * _EPS * np.abs(values)
+    long = np.abs(seen.step) > _FEW_ROUNDINGS * _EPS * np.abs(values)
     return not bool(np.any(moving & (long | (seen.backward > 0.5 * size * _EPS))))
 
 

@@ -98,14 +98,15 @@ def _residuals(
     damped: NDArray[np.complex128],
 ) -> NDArray[np.complex128]:
     """Q(λ) z for every column, shape (m, q), from the factors."""
-    result = values * damped
     squares = problem.sigma**2 * problem.sign
+    # In place: these are the largest arrays of a solve.
+    result = values * vectors
+    result[problem.heavy :] = 0.0
+    result += damped
+    result *= values
     if problem.modal:
-        held = len(squares)
-        result[:held] += (values**2 + squares[:, None]) * vectors[:held]
-        result[held:] += values**2 * vectors[held:]
+        result[: len(squares)] += squares[:, None] * vectors[: len(squares)]
     else:
-        result[: problem.heavy] += values**2 * vectors[: problem.heavy]
         result += problem.W @ (squares[:, None] * (problem.W.T @ vectors))
     if problem.skew_stiffness is not None:
         result += problem.skew_stiffness @ vectors

@@ -113,7 +113,7 @@ def test_bits_must_make_sense() -> None:
 
 def test_without_python_flint_the_error_says_what_to_install(monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr("mdof.certify.find_spec", lambda _: None)
-    with pytest.raises(UsageError, match=r"pip install mdof-damping\[certify\]"):
+    with pytest.raises(UsageError, match=r"pip install python-flint"):
         certify(chain())
 
 
