@@ -69,10 +69,15 @@ REGISTRY: dict[str, FindingKind] = {
         meaning="A loss factor above 1 is more than any mount or joint in use has.",
         advice="Loss factors are plain numbers: 8 % is 0.08 or `8 %`. For a damping ratio ζ write twice as much.",
     ),
+    "doubtful-damping-ratio": FindingKind(
+        severity=Severity.WARNING,
+        meaning="A damping ratio above 1 is given for the whole machine: more than critical damping.",
+        advice="Damping ratios are plain numbers: 5 % is 0.05 or `5 %`.",
+    ),
     "doubtful-inertia": FindingKind(
         severity=Severity.WARNING,
         meaning="A radius of gyration does not go with the size of its body.",
-        advice="Check the unit and the powers of ten of the inertia, and that it is about the body's own centre.",
+        advice="Check the unit and the powers of ten of inertia and mass; keep it if the body really is of that size.",
     ),
     "centre-at-origin": FindingKind(
         severity=Severity.NOTE,

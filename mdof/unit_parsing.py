@@ -15,6 +15,8 @@ __all__ = ["QuantityError", "factor_of", "fraction", "known", "nearest", "short"
 
 
 _MOST_COMPARED = 1000
+#: Units that are written before another one without a sign between them.
+_BEFORE = ("N", "kN", "kg", "g", "lb", "lbf", "kgf")
 LONGEST_UNIT = 80
 _TOKEN = re.compile(r"\s*([A-Za-z%]+0?|[0-9]+|[*/^()-])")
 _SIGNS = str.maketrans({"·": "*", "⋅": "*", "×": "*", "²": "^2", "³": "^3", "⁴": "^4", "µ": "u", "μ": "u", "°": "deg"})
@@ -29,8 +31,8 @@ class QuantityError(UsageError):
         super().__init__(f"{message}; {expected}" if expected else message)
 
 
-def nearest(word: str, choices: Any) -> str | None:
-    """The choice that looks most like ``word``, or None where none does."""
+def nearest(word: str, choices: Any, cutoff: float = 0.6) -> str | None:
+    """The choice that looks most like ``word``, or None where none does; ``cutoff`` is the likeness needed, 0 to 1."""
     options = [str(choice) for choice in choices]
     if len(options) > _MOST_COMPARED:
         # Comparing is slow; among many names those of about the same length are enough.
@@ -39,7 +41,7 @@ def nearest(word: str, choices: Any) -> str | None:
     folded = {option.casefold(): option for option in reversed(options)}
     if word.casefold() in folded:
         return folded[word.casefold()]
-    found = difflib.get_close_matches(word[:60], options, n=1, cutoff=0.6)
+    found = difflib.get_close_matches(word[:60], options, n=1, cutoff=cutoff)
     return found[0] if found else None
 
 
@@ -157,13 +159,23 @@ def known(name: str, written: str) -> str:
         return "percent"
     if name in NAMES and name != "percent":
         return name
-    hint = HINTS.get(name) or nearest(name, NAMES - {"percent"})
+    hint = HINTS.get(name) or _run_together(name) or nearest(name, sorted(NAMES - {"percent"}))
     raise QuantityError(
         f"`{short(written)}` is not a unit mdof knows"
         if name == written
         else f"`{short(name)}` in `{short(written)}` is not a unit mdof knows",
         f"write {hint}" if hint else "join units with * and /, such as N*s/m; the manual lists the units",
     )
+
+
+def _run_together(name: str) -> str | None:
+    """``N*mm`` for ``Nmm``: two units without a sign between them, the first a force or a mass."""
+    for place in range(1, len(name)):
+        first, second = name[:place], name[place:]
+        exact = [unit for unit in _BEFORE if unit == first] or [unit for unit in _BEFORE if unit.lower() == first]
+        if len(exact) == 1 and second in NAMES:
+            return f"{exact[0]}*{second}"
+    return None
 
 
 @lru_cache(maxsize=2048)

@@ -169,7 +169,7 @@ def _dimension(
 #: Every dimension of the model file.
 DIMENSIONS: dict[str, Dimension] = dict(
     [
-        _dimension("mass", "a mass", "kg", "12 kg", (1, 0, 0, 0)),
+        _dimension("mass", "a mass", "kg", "100 kg", (1, 0, 0, 0)),
         _dimension("force", "a force", "N", "9 kN", (1, 1, -2, 0)),
         _dimension("length", "a length", "m", "25 mm", (0, 1, 0, 0)),
         _dimension("area", "an area", "m^2", "1200 mm^2", (0, 2, 0, 0)),
@@ -180,17 +180,17 @@ DIMENSIONS: dict[str, Dimension] = dict(
         _dimension("rate", "a rate", "1/s", "0.8 1/s", (0, 0, -1, 0)),
         _dimension("frequency", "a frequency or speed", "rad/s", "12 Hz", (0, 0, -1, 1), always=True),
         _dimension("angle", "an angle", "rad", "30 deg", (0, 0, 0, 1)),
-        _dimension("inertia", "a moment of inertia", "kg*m^2", "62 kg*m^2", (1, 2, 0, 0)),
+        _dimension("inertia", "a mass moment of inertia", "kg*m^2", "20 kg*m^2", (1, 2, 0, 0)),
         _dimension("unbalance", "an unbalance", "kg*m", "12 g*m", (1, 1, 0, 0)),
         _dimension("moment", "a moment", "N*m", "60 N*m", (1, 2, -2, 0)),
         _dimension("pressure", "a pressure or modulus", "Pa", "210 GPa", (1, -1, -2, 0)),
-        _dimension("stiffness", "a stiffness", "N/m", "320 kN/m", (1, 0, -2, 0)),
-        _dimension("damping", "a damping", "N*s/m", "4100 N*s/m", (1, 0, -1, 0)),
+        _dimension("stiffness", "a stiffness", "N/m", "500 kN/m", (1, 0, -2, 0)),
+        _dimension("damping", "a damping", "N*s/m", "2000 N*s/m", (1, 0, -1, 0)),
         _dimension(
-            "rotational_stiffness", "a rotational stiffness", "N*m/rad", "3.6e6 N*m/rad", (1, 2, -2, -1), (1, 2, -2, 0)
+            "rotational_stiffness", "a rotational stiffness", "N*m/rad", "50 kN*m/rad", (1, 2, -2, -1), (1, 2, -2, 0)
         ),
         _dimension(
-            "rotational_damping", "a rotational damping", "N*m*s/rad", "0.9 N*m*s/rad", (1, 2, -1, -1), (1, 2, -1, 0)
+            "rotational_damping", "a rotational damping", "N*m*s/rad", "10 N*m*s/rad", (1, 2, -1, -1), (1, 2, -1, 0)
         ),
         _dimension("velocity", "a velocity", "m/s", "4.5 mm/s", (0, 1, -1, 0)),
         _dimension("acceleration", "an acceleration", "m/s^2", "0.3 g0", (0, 1, -2, 0)),

@@ -99,14 +99,28 @@ def _split(text: str, names: tuple[str, ...]) -> tuple[str, str]:
     match = _NUMBER.match(stripped) if len(stripped) <= _LONGEST_NUMBER + LONGEST_UNIT else None
     if match is None:
         what = f"`{short(text)}` is not a number" if stripped else "empty text where a number belongs"
+        key, colon, after = stripped.partition(":")
+        if colon and key.isidentifier() and after[:1].strip():
+            raise QuantityError(what, f"put a blank after the colon: `{short(f'{key}: {after}')}`")
         raise QuantityError(what, f"write {_as_example(names)}")
     rest = stripped[match.end() :]
     if rest[:1] in (",", "_", ":", ".") or rest[:1].isdigit():
-        raise QuantityError(
-            f"`{short(text)}` is not a number",
-            f"write digits with a decimal point only, such as {DIMENSIONS[names[0]].example}",
+        way = _without_comma(stripped) or (
+            f"write digits with a decimal point only, e.g. {DIMENSIONS[names[0]].example}"
         )
+        raise QuantityError(f"`{short(text)}` is not a number", way)
     return _in_range(match.group(), names), rest.strip()
+
+
+def _without_comma(text: str) -> str | None:
+    """What to write instead of ``0,5 m``; a comma before three digits may also group thousands."""
+    comma = re.fullmatch(r"([-+]?[0-9]+),([0-9]+)((?:[eE][-+]?[0-9]+)?(?:[^0-9.,].*)?)", text)
+    if comma is None:
+        return None
+    before, after, rest = comma.groups()
+    point = f"write {short(f'{before}.{after}{rest}')}, with a decimal point"
+    whole = f" (or {short(f'{before}{after}{rest}')} if the comma groups thousands)"
+    return point + (whole if len(after) == 3 and before.lstrip("+-") != "0" else "")
 
 
 def _plain(value: Any, names: tuple[str, ...]) -> str:
@@ -223,7 +237,9 @@ def _with_unit(shown: str, wanted: Dimension, defaults: Mapping[str, str] | None
 
 def _as_example(names: tuple[str, ...]) -> str:
     wanted = DIMENSIONS[names[0]]
-    return f"{wanted.words} such as {wanted.example}"
+    if wanted.name == "number":
+        return f"{wanted.words}, e.g. {wanted.example}"
+    return f"{wanted.words} with its unit, e.g. {wanted.example}"
 
 
 def _kind(value: Any) -> str:

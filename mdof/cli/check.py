@@ -46,7 +46,8 @@ def check(ctx: click.Context, models: tuple[str, ...], schema: bool, state: str 
 
         checked = check_model(model)
         if form == "json":
-            from mdof.report.records import check_record, json_line
+            from mdof.report.check_record import check_record
+            from mdof.report.records import json_line
 
             session.data(json_line(check_record(model, checked)))
         else:

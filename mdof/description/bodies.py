@@ -12,7 +12,7 @@ from pydantic import Field
 
 from mdof.description.fields import Reads, Section, context_of
 from mdof.description.quantities import Quantity, Refused, Trouble, read_quantity, refuse
-from mdof.description.readers import DIRECTION_LIST, POINT, TEXT, TRUTH, VECTOR, each, of
+from mdof.description.readers import DIRECTION_LIST, POINT, TEXT, TRUTH, VECTOR, of, three_of
 
 __all__ = ["Body", "BodyPart", "Contents", "MassProperties", "Spin", "Support", "mass_properties"]
 
@@ -32,10 +32,10 @@ def _inertia(raw: Any, info: Any) -> Inertia:
     if isinstance(raw, list | tuple):
         if len(raw) != 3:
             raise refuse(
-                f"{len(raw)} values where three belong", "write [xx, yy, zz], or {xx: .., yy: .., zz: .., xz: ..}"
+                f"{len(raw)} values where three, xx, yy and zz, belong",
+                "write [xx, yy, zz], or {xx: .., yy: .., zz: .., xz: ..}, each with its unit",
             )
-        values = each(raw, lambda entry: read_quantity(entry, ("inertia",), context))
-        return dict(zip(_ENTRIES, values, strict=False))
+        return dict(zip(_ENTRIES, three_of(raw, "inertia", context), strict=False))
     if not isinstance(raw, Mapping) or "value" in raw:
         return read_quantity(raw, ("inertia",), context)
     found, entries = {}, []
@@ -90,7 +90,7 @@ class Contents(Section):
 class BodyPart(Section):
     """One part of a body that is made of several; a part without inertia counts as a point."""
 
-    example: ClassVar[str] = "{mass: 12 kg, centre: [0, 0, 0.3]}"
+    example: ClassVar[str] = "{mass: 10 kg, centre: [0, 0, 0.3]}"
 
     name: Annotated[str | None, TEXT] = Field(None, description="What the part is, for the reader.")
     mass: Annotated[Quantity | None, of("mass", positive=True)] = Field(None, description="Mass of the part.")

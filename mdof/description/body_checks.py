@@ -11,6 +11,7 @@ from mdof.description.quantities import DIRECTIONS, Quantity, Trouble
 
 __all__ = ["body_troubles"]
 
+_EACH = "each a mass moment of inertia with its unit"
 _TURNS = {"rx": "xx", "ry": "yy", "rz": "zz"}
 
 
@@ -49,7 +50,7 @@ def _mass(body: Body, moves: bool) -> Iterator[Trouble]:
         yield Trouble(
             (),
             "the body has no mass",
-            "write `mass: 12 kg`, `weight: 118 N`, `made_of: [..]` or `massless: true`",
+            "give its `mass` with its unit, or its `weight` or `made_of: [..]`; a joint is `massless: true`",
             True,
         )
 
@@ -58,17 +59,16 @@ def _inertia(body: Body, turns: list[str]) -> Iterator[Trouble]:
     inertia = body.inertia
     if inertia is None:
         if turns:
-            needed = ", ".join(f"{_TURNS[turn]}: ..kg*m^2" for turn in turns)
             yield Trouble(
                 (),
                 f"the body turns ({', '.join(turns)}) but has no inertia",
-                f"write `inertia: {{{needed}}}` with its own values, or narrow its `directions`",
+                f"write `inertia: {_form(turns)}`, {_EACH}, or narrow its `directions`",
                 True,
             )
         return
     if isinstance(inertia, Quantity):
         if len(turns) > 1:
-            yield Trouble(("inertia",), f"one inertia for {len(turns)} rotations", "write three, [xx, yy, zz]")
+            yield Trouble(("inertia",), f"one inertia for {len(turns)} rotations", f"write {_form(turns)}, {_EACH}")
         elif inertia.value <= 0:
             yield Trouble(("inertia",), f"an inertia of {inertia.text} is not possible", "it must be greater than zero")
         return
@@ -77,10 +77,15 @@ def _inertia(body: Body, turns: list[str]) -> Iterator[Trouble]:
         yield Trouble(
             ("inertia",),
             f"the body turns ({', '.join(turns)}) but its inertia lacks {', '.join(missing)}",
-            "write xx, yy and zz",
+            f"write {_form(turns)}, {_EACH}",
         )
         return
     yield from _possible(body, ("inertia",))
+
+
+def _form(turns: list[str]) -> str:
+    """How the moments of inertia for these rotations are written."""
+    return f"{{{', '.join(f'{_TURNS[turn]}: ..' for turn in turns)}}}"
 
 
 def _made_of(body: Body) -> Iterator[Trouble]:
@@ -149,9 +154,11 @@ def _possible(body: Body, path: tuple[str, ...]) -> Iterator[Trouble]:
             "check the products of inertia and the units",
         )
     elif (complete or body.made_of is not None) and principal[2] > (principal[0] + principal[1]) * (1 + 1e-6):
+        plain = isinstance(body.inertia, dict) and not {"xy", "yz", "xz"} & set(body.inertia)
+        worst = ("xx", "yy", "zz")[int(np.argmax(np.diag(tensor)))]
+        what = f"its {worst} is" if plain else f"of its principal moments {shown} kg*m^2 the largest is"
         yield Trouble(
             path,
-            f"no real body has this inertia: of its principal moments {shown} kg*m^2 the largest is above the "
-            "sum of the others",
+            f"no real body has this inertia: {what} above the sum of the other two",
             "check the numbers and the units; moments about another point belong in `made_of` with `inertia_about`",
         )

@@ -64,7 +64,7 @@ def build(raw: Mapping[str, Any], memory: Memory | None = None) -> tuple[dict[st
     """
     parts = Parts()
     memory = memory or Memory()
-    misspelt = False
+    misspelt: set[str | None] = set()
     for key in raw:
         if len(parts.troubles) >= MOST_TROUBLES:
             break
@@ -80,11 +80,12 @@ def build(raw: Mapping[str, Any], memory: Memory | None = None) -> tuple[dict[st
                 )
             else:
                 parts.troubles.append(unknown_key(key, TOP))
-                misspelt |= nearest(str(key), TOP) in (*NAMED, "units")
+                misspelt.add(nearest(str(key), TOP))
         elif raw[key] is None:
             parts.troubles.append(Trouble((key,), "no value is given", f"write one, or remove the key `{key}`"))
     given = {key: value for key, value in raw.items() if value is not None}
-    units = _units(given.get("units", {}), parts)
+    # Units under a misspelt key are there: every bare number would be told to lack them.
+    units = _units(given.get("units", "SI" if "units" in misspelt else {}), parts)
     directions = _single(parts, "directions", DIRECTION_LIST, given, Context(units)) or ("x",)
     context = Context(units, directions)
     parts.values["units"] = units
@@ -98,7 +99,7 @@ def build(raw: Mapping[str, Any], memory: Memory | None = None) -> tuple[dict[st
         parts.values[name] = None
         if name in given:
             parts.values[name] = _validated(parts, section, given[name], (name,), context, memory)
-    if not misspelt:
+    if not misspelt & {*NAMED, "units", "directions"}:
         # Without a section that hides under a wrong name everything that refers to it would be wrong, too.
         check_whole(parts, written, directions, given)
     if parts.values["criteria"] is None:

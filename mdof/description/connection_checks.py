@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterator
+from dataclasses import replace
 from typing import Any
 
 import numpy as np
@@ -11,11 +13,14 @@ from mdof.description.connections import DIRECTIONAL, Connection, PropertySet, V
 from mdof.description.quantities import DIRECTIONS, Quantity, Trouble
 from mdof.description.special_checks import beam_troubles, gear_troubles, rigid_link_troubles
 from mdof.description.surroundings import Surroundings, unknown_name
+from mdof.units import nearest
 
 __all__ = ["connection_troubles", "property_set_troubles"]
 
 #: What people call the ground.
-_EARTH = frozenset(["base", "deck", "earth", "fixed", "floor", "foundation", "gnd", "slab", "soil", "wall"])
+_EARTH = re.compile(
+    r"(?:^|[\W_\d])(?:base|deck|earth|fixed|floor|foundation|gnd|ground|slab|soil|wall)s?(?:$|[\W_\d])", re.IGNORECASE
+)
 
 
 def property_set_troubles(values: PropertySet) -> Iterator[Trouble]:
@@ -71,9 +76,10 @@ def _ends_known(key: str, names: tuple[str, ...], around: Surroundings) -> Itera
         if name not in around.bodies and name not in around.grounds:
             unknown = True
             trouble = unknown_name((key, index), "body or support", name, known)
-            if name.casefold() in _EARTH:
+            if _EARTH.search(name):
                 way = "what never moves is `ground`; what moves belongs under `bodies` or `supports`"
-                trouble = Trouble(trouble.path, trouble.message, way)
+                close = nearest(name, known)
+                trouble = replace(trouble, expected=f"did you mean `{close}`? {way}" if close else way)
             yield trouble
     if not unknown and names[0] == names[1]:
         yield Trouble((key,), f"`{names[0]}` is connected to itself", "name two different ends")

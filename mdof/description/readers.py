@@ -61,12 +61,14 @@ def _triple(raw: Any, what: str) -> Sequence[Any]:
     return raw
 
 
-def _lengths(raw: Sequence[Any], dimension: str, context: Context) -> tuple[Quantity, ...]:
+def three_of(raw: Sequence[Any], dimension: str, context: Context) -> tuple[Quantity, ...]:
     """Three quantities; what several of them lack is said once."""
     bare = [entry for entry in raw if isinstance(entry, int | float) and not isinstance(entry, bool)]
     if len(bare) > 1 and dimension not in context.units and "" not in context.units:
         unit = DIMENSIONS[dimension].unit
-        shown = ", ".join(f"{entry:g} {unit}" if entry in bare else str(entry)[:20] for entry in raw)
+        shown = ", ".join(
+            f"{entry:g} {unit}" if entry in bare else entry[:20] if isinstance(entry, str) else ".." for entry in raw
+        )
         raise refuse(
             f"{len(bare)} of three numbers have no unit and `units` does not cover {dimension}",
             f"write [{shown}], or add `{dimension}: {unit}` to `units` (`units: SI` covers all)",
@@ -93,7 +95,7 @@ def triple_of(dimension: str, what: str) -> Reads:
 
     def function(raw: Any, info: Any) -> tuple[Quantity, ...]:
         context = context_of(info)
-        return _lengths(_triple(raw, what), dimension, context)
+        return three_of(_triple(raw, what), dimension, context)
 
     schema = {"type": "array", "items": {"x-quantity": [dimension]}, "minItems": 3, "maxItems": 3}
     return Reads(function, schema)
@@ -105,7 +107,7 @@ POINT = triple_of("length", POINT_WORDS)
 
 def read_point(raw: Any, context: Context) -> tuple[Quantity, ...]:
     """A point in space, three lengths."""
-    return _lengths(_triple(raw, POINT_WORDS), "length", context)
+    return three_of(_triple(raw, POINT_WORDS), "length", context)
 
 
 def _vector(raw: Any, info: Any) -> tuple[float, float, float]:

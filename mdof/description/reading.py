@@ -11,6 +11,7 @@ from mdof.description.document import Document
 from mdof.description.schema import Model
 from mdof.description.strict_yaml import parse
 from mdof.errors import ModelError, Problem
+from mdof.units import nearest
 
 __all__ = ["LARGEST_FILE", "load", "read_document"]
 
@@ -105,14 +106,14 @@ def _bytes(path: str) -> bytes:
 
 
 def _similar_file(path: str) -> str:
-    from mdof.units import nearest
-
+    """A model file beside it whose name, but for its ending, is nearly the same."""
     try:
-        names = [entry.name for entry in Path(path).absolute().parent.iterdir() if entry.is_file()][:2000]
+        beside = [entry for entry in Path(path).absolute().parent.iterdir() if entry.suffix in (".yaml", ".yml")]
+        stems = {entry.stem: entry.name for entry in beside[:2000] if entry.is_file()}
     except (OSError, ValueError):
         return "check the name and the folder"
-    close = nearest(Path(path).name, names)
-    return f"did you mean `{close}`?" if close else "check the name and the folder"
+    close = nearest(Path(path).stem, stems, cutoff=0.66)
+    return f"did you mean `{stems[close]}`?" if close else "check the name and the folder"
 
 
 def _decoded(content: bytes, path: str) -> str:

@@ -228,13 +228,18 @@ def _checked(raw: Mapping[str, Any], document: Document | None) -> dict[str, Any
     unreadable = document.unreadable if document is not None else set()
     seen: set[tuple[KeyPath, str]] = set()
     for trouble in found:
-        if not any(trouble.path[: len(path)] == path for path in unreadable):
+        if not any(_follows(trouble.path, path) for path in unreadable):
             problems.append(placed(trouble, document))
         seen.add((trouble.path, trouble.message))
     problems.extend(state_problems(raw, document, memory, seen))
     if problems:
         raise ModelError(_in_order(problems))
     return _titled(values, raw, document)
+
+
+def _follows(path: KeyPath, unreadable: KeyPath) -> bool:
+    """True where a complaint is about an unreadable value, or about what the body or connection around it lacks."""
+    return path[: len(unreadable)] == unreadable or (len(path) >= 2 and unreadable[: len(path)] == path)
 
 
 def _in_order(problems: list[Problem]) -> list[Problem]:

@@ -11,7 +11,7 @@ from typing import Any
 
 from mdof.description.document import Document, Path, Span
 from mdof.description.scalars import resolve
-from mdof.description.yaml_syntax import DEEPEST, hidden_character, span_of, syntax_problem
+from mdof.description.yaml_syntax import DEEPEST, decimal_comma, hidden_character, span_of, syntax_problem
 
 __all__ = ["parse"]
 
@@ -181,7 +181,29 @@ class _Builder:
             value, complaint, expected = resolve(event.value)
             if complaint and not self.dropped():
                 self.complain(event, path, complaint, expected)
+            elif not event.value and self.comma(path):
+                self.stack[-1].dropped = True
         self.put(value, event, path)
+
+    def comma(self, path: Path) -> bool:
+        """Complain where a key without a value, as in ``{mass: 0,5 kg}``, is the rest of a number."""
+        frame = self.stack[-1] if self.stack else None
+        if frame is None or frame.key is None or frame.dropped or not frame.container:
+            return False
+        span, before = self.document.keys[path], next(reversed(frame.container))
+        meant = decimal_comma(self.document, span.line, span.column, frame.key)
+        if meant is None:
+            return False
+        number, problems = (*frame.path, before), self.document.problems
+        if problems and (problems[-1].line, problems[-1].column) == span[:2]:
+            problems.pop()  # digits for a key, which this explains
+        what, way = f"a comma stands in the number of `{before[:40]}`", f"write {before[:40]}: {meant[:40]}"
+        place = self.document.values[number]
+        problems.append(
+            self.document.problem_at(place.line, place.column, number, what, f"{way}, with a decimal point")
+        )
+        self.document.unreadable.add(number)
+        return True
 
     def key(self, event: Any, plain: bool) -> None:
         frame = self.stack[-1]

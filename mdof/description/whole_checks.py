@@ -105,6 +105,10 @@ def _whole(values: Mapping[str, Any], written: Mapping[str, dict[str, Any]], aro
             yield trouble.below(("loads", name))
     criteria = values["criteria"]
     if criteria is not None:
+        least = criteria.least_damping_ratio
+        if least is not None and least > 1:
+            way = f"write {least / 100:g} or {least:g} %" if least <= 100 else "write a ratio such as 5 %"
+            yield Trouble(("criteria", "least_damping_ratio"), f"{least:g} times critical damping is asked for", way)
         for key, entry in (("settle", criteria.settle), ("velocity_limit", criteria.velocity_limit)):
             if entry is not None and entry.at is not None and entry.at not in written["watch"]:
                 yield unknown_name(("criteria", key, "at"), "watched point", entry.at, written["watch"])

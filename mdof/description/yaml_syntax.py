@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+import re
 from typing import Any
 
-from mdof.description.document import Document, Span
+from mdof.description.document import Document, Path, Span
 from mdof.errors import Problem
 
-__all__ = ["DEEPEST", "hidden_character", "span_of", "syntax_problem"]
+__all__ = ["DEEPEST", "decimal_comma", "hidden_character", "span_of", "syntax_problem"]
 
 
 #: Deeper than any model can mean.
@@ -17,6 +18,12 @@ DEEPEST = 24
 def hidden_character(text: str) -> str | None:
     """A character of the text that is neither printed nor white space, if there is one."""
     return next((character for character in text if not (character.isprintable() or character.isspace())), None)
+
+
+def decimal_comma(document: Document, line: int, column: int, text: str) -> str | None:
+    """The number of which ``text``, which starts at this place (1-based), is the part after a decimal comma."""
+    before = re.search(r"(?<![^\s:])[-+]?[0-9]+,$", document.lines[line - 1][: column - 1])
+    return f"{before.group()[:-1]}.{text}" if before and text[:1].isdigit() else None
 
 
 def span_of(event: Any) -> Span:
@@ -103,6 +110,9 @@ def syntax_problem(document: Document, error: Any) -> Problem:
         if start in text:
             message, expected = what, way
             break
+    glued = _glued_colon(document, line) if text.startswith("mapping values are not allowed") else None
+    if glued is not None:
+        return document.problem_at(*glued)
     if error.context_mark is not None and mark is not error.context_mark and error.context_mark.line + 1 != line:
         message = f"{message} (it began on line {error.context_mark.line + 1})"
     if line > len(document.lines) or (line == len(document.lines) and not document.lines[-1].strip()):
@@ -111,3 +121,13 @@ def syntax_problem(document: Document, error: Any) -> Problem:
             line -= 1
         column = len(document.lines[line - 1].rstrip()) + 1
     return document.problem_at(line, column, (), message, expected)
+
+
+def _glued_colon(document: Document, line: int) -> tuple[int, int, Path, str, str] | None:
+    """The complaint about ``mass:180 kg`` on this line or the one above: to YAML it is text that goes on below."""
+    for number in (line, line - 1):
+        found = re.match(r"\s*(?:- )?(([A-Za-z_]+):([-+.0-9\[{][^:]*))", document.lines[number - 1]) if number else None
+        if found is not None:
+            way = f"put a blank after the colon: `{found[2]}: {found[3].strip()[:40]}`"
+            return number, found.start(1) + 1, (), f"`{found[1].strip()[:40]}` is text, not a key and its value", way
+    return None

@@ -17,7 +17,7 @@ import numpy as np
 from mdof.eigen.blocks import rotate_equal
 from mdof.eigen.quadratic import solve_complete
 from mdof.eigen.reduce import NormalisedProblem, normalise
-from mdof.eigen.threads import suited_threads
+from mdof.eigen.threads import at_once, suited_threads
 from mdof.eigen.verify import GATE, lengths
 from mdof.errors import UnverifiedError, UsageError
 from mdof.modes.pairing import pair_roots
@@ -109,13 +109,14 @@ def sweep(system: System, damper: str, values: Sequence[float]) -> DamperSweep:
     unit = system.with_values(damping=np.where(own, system.damping / largest, system.damping))
     with suited_threads(system.size), np.errstate(over="ignore", invalid="ignore", divide="ignore", under="ignore"):
         problem, _ = rotate_equal(normalise(unit))
-        varied = np.zeros(len(problem.damper_rows), dtype=bool)
-        varied[: len(own)] = own
-        share = (problem.damper_rows[varied].T * problem.damper_signs[varied]) @ problem.damper_rows[varied]
-        found = [_solved(problem, varied, share, float(value)) for value in wanted]
+    varied = np.zeros(len(problem.damper_rows), dtype=bool)
+    varied[: len(own)] = own
+    share = (problem.damper_rows[varied].T * problem.damper_signs[varied]) @ problem.damper_rows[varied]
+    found = at_once(lambda value: _solved(problem, varied, share, value), [float(value) for value in wanted])
     return _followed(damper, wanted, found, problem.heavy)
 
 
+@np.errstate(over="ignore", invalid="ignore", divide="ignore", under="ignore")
 def _solved(problem: NormalisedProblem, varied: NDArray[np.bool_], share: NDArray[np.float64], value: float) -> _At:
     rows = np.where(varied[:, None], np.sqrt(value) * problem.damper_rows, problem.damper_rows)
     roots = solve_complete(
@@ -218,9 +219,10 @@ def _matched(
 
 def _unit_rows(shapes: NDArray[np.complex128]) -> NDArray[np.complex128]:
     """Mass-normalised shapes as rows of length 1; rows are what matching takes out and compares."""
-    rows = np.ascontiguousarray(shapes.T)
+    rows = np.array(shapes.T, order="C")
     length = lengths(shapes)
-    return np.asarray(rows / np.where(length > 0, length, 1.0)[:, None])
+    rows /= np.where(length > 0, length, 1.0)[:, None]
+    return rows
 
 
 def _alike(first: NDArray[np.complex128], second: NDArray[np.complex128]) -> NDArray[np.float64]:

@@ -7,13 +7,15 @@ from collections.abc import Mapping
 from typing import TYPE_CHECKING
 
 from mdof.report.layout import Grid, Paragraph, styled
-from mdof.report.look import DASH, Look, aligned, number
+from mdof.report.look import DASH, Look, aligned, frequency, number, plural
 
 if TYPE_CHECKING:
     from mdof.report.checking import CheckedModel, ConnectionFacts
 
 __all__ = ["check_text"]
 
+#: Ratio up to which values share a prefix.
+_ALIKE = 200.0
 _PREFIXES = ((1e9, "G"), (1e6, "M"), (1e3, "k"), (1.0, ""))
 _LINEAR = {"stiffness": "N/m", "damping": "N s/m", "inertance": "kg"}
 _TURNING = {"stiffness": "N m/rad", "damping": "N m s/rad", "inertance": "kg m²"}
@@ -57,19 +59,28 @@ def _bodies(checked: CheckedModel, look: Look) -> list[Grid | Paragraph]:
         moments.append(None)
     shown = aligned(amounts, 5, 3)
     head = f"{'inertia' if turning else 'mass'} {unit}"
-    spatial = not turning and any(moments)
-    table = Grid()
-    heads = ["body", head, *([] if flat else [f"{f'centre {axis} m':>10}" for axis in "xyz"])]
-    heads += ["inertia x, y, z kg m²"] if spatial else []
-    table.add(*[styled(text, "bold") for text in heads])
     inertias = [", ".join(_brief(value) for value in entry) if entry else "" for entry in moments]
-    for name, amount, at, inertia in zip(names, shown, centres, inertias, strict=True):
-        places = [f"{DASH if math.isnan(value) else f'{value:z.3f}':>10}" for value in at]
-        style = "bold" if name is names[-1] and not turning else ""
-        cells = [name, f"{amount:>{len(head)}}", *([] if flat else places), *([inertia] if spatial else [])]
-        table.add(*[styled(text, style) for text in cells])
-    if look.width is None or table.width <= look.width:
-        return [table]
+    for index, products in enumerate(checked.products.values()):
+        inertias[index] += "".join(f"; {key} {_brief(value)}" for key, value in products.items())
+    columns = [("body", names), (head, [f"{amount:>{len(head)}}" for amount in shown])]
+    if not flat:
+        for axis, letter in enumerate("xyz"):
+            places = [DASH if math.isnan(at[axis]) else f"{at[axis]:z.3f}" for at in centres]
+            columns.append((f"{f'centre {letter} m':>10}", [f"{place:>10}" for place in places]))
+    spatial = not turning and any(moments)
+    if spatial:
+        columns.append(("inertia x, y, z kg m²", inertias))
+        radii = [", ".join(number(value, 2) for value in entry) if entry else "" for entry in checked.radii.values()]
+        columns.append(("radii of gyration m", [*radii, ""]))
+    # Radii of gyration show a slip of ten at once, but follow from what stands beside them.
+    for count in (len(columns), len(columns) - 1 if spatial else len(columns)):
+        table = Grid()
+        table.add(*[styled(text, "bold") for text, _ in columns[:count]])
+        for index in range(len(names)):
+            style = "bold" if index == len(checked.bodies) else ""
+            table.add(*[styled(cells[index], style) for _, cells in columns[:count]])
+        if look.width is None or table.width <= look.width:
+            return [table]
     lines: list[Grid | Paragraph] = []
     for name, amount, at, inertia in zip(names, shown, centres, inertias, strict=True):
         text = f"{amount.strip()} {unit}"
@@ -90,12 +101,36 @@ def _connections(facts: tuple[ConnectionFacts, ...], look: Look) -> list[Grid | 
         values = [f"{DASH} ({fact.words})"] if not fact.values else []
         for which, entry in fact.values:
             values.append(f"{_NAMES[which]} {_value(which, entry)}")
-        text = "; ".join(values) + (f"; {fact.remark}" if fact.remark else "")
+        if fact.loss_reference is not None:
+            values[-1] += f" at {frequency(fact.loss_reference)}"
+        if fact.branches:
+            each = (
+                ", ".join(f"{_NAMES[which]} {_value(which, entry)}" for which, entry in one) for one in fact.branches
+            )
+            values.append(f"{plural(len(fact.branches), 'series branch', 'series branches')} ({'; '.join(each)})")
+        values += [f"{part.replace('_', ' ')} {_made(part, entry)}" for part, entry in fact.geometry]
+        text = "; ".join(values)
         table.add(name, ends, text)
         lines += [styled(f"{name}, {ends}", "bold"), styled(text, "", 4)]
     return [table] if look.width is None or look.width >= 90 else lines
 
 
+def _made(part: str, values: tuple[float, ...]) -> str:
+    """``0.336, 0.105 m`` for the radii of a gear, ``0, 0, 1`` for a direction."""
+    unit = _PARTS.get(part, "")
+    return f"{', '.join(_brief(value) for value in values)} {unit}".strip()
+
+
+#: Units of what gears and beams are made of.
+_PARTS = {
+    "radii": "m",
+    "youngs_modulus": "N/m²",
+    "shear_modulus": "N/m²",
+    "area": "m²",
+    "second_moments": "m⁴",
+    "torsion_constant": "m⁴",
+    "shear_areas": "m²",
+}
 _NAMES = {"stiffness": "k", "damping": "c", "inertance": "b", "loss_factor": "η"}
 
 
@@ -113,11 +148,17 @@ def _value(which: str, entry: float | Mapping[str, float]) -> str:
 
 
 def _scaled(values: Mapping[str, float], unit: str) -> str:
-    largest = max(abs(value) for value in values.values())
+    """Values of about one size with one prefix, others with their own."""
     # Kilograms have their prefix already.
     prefixes = ((1.0, ""),) if unit.startswith("kg") else _PREFIXES
-    scale, prefix = next(((scale, prefix) for scale, prefix in prefixes if largest >= scale), (1.0, ""))
-    return f"{_directed(values, scale)} {prefix}{unit}"
+    sizes = [abs(value) for value in values.values() if value]
+    alike = not sizes or max(sizes) <= _ALIKE * min(sizes)
+    together: dict[tuple[float, str], dict[str, float]] = {}
+    for direction, value in values.items():
+        size = max(sizes, default=0.0) if alike or not value else abs(value)
+        place = next(((scale, prefix) for scale, prefix in prefixes if size >= scale), (1.0, ""))
+        together.setdefault(place, {})[direction] = value
+    return ", ".join(f"{_directed(part, scale)} {prefix}{unit}" for (scale, prefix), part in together.items())
 
 
 def _directed(values: Mapping[str, float], scale: float) -> str:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Any
 
@@ -9,6 +10,7 @@ import numpy as np
 
 import mdof
 from mdof.description.network import network_findings, summary
+from mdof.description.plausibility import radii_of_gyration
 from mdof.description.resolved import kind_words
 
 if TYPE_CHECKING:
@@ -17,7 +19,10 @@ if TYPE_CHECKING:
     from mdof.findings import Finding
     from mdof.modes.mode import DampedModes
 
-__all__ = ["CheckedModel", "ConnectionFacts", "check_model", "solve_model"]
+__all__ = ["CheckedModel", "ConnectionFacts", "Values", "check_model", "solve_model"]
+
+#: Which value, with one number or several by direction.
+Values = tuple[tuple[str, float | dict[str, float]], ...]
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
@@ -30,15 +35,19 @@ class ConnectionFacts:
     words : what it is.
     between : names of its two ends.
     values : which (``stiffness``, ``damping``, ``inertance``, ``loss_factor``) with one number or several by direction.
-    remark : what else it has.
+    branches : the same of every series branch.
+    geometry : what a gear or beam is made of, by its name in the model file.
+    loss_reference : frequency of its own at which its loss factor holds [rad/s]; None where it has none.
     count : number of points.
     """
 
     name: str
     words: str
     between: tuple[str, str]
-    values: tuple[tuple[str, float | dict[str, float]], ...]
-    remark: str = ""
+    values: Values
+    branches: tuple[Values, ...] = ()
+    geometry: tuple[tuple[str, tuple[float, ...]], ...] = ()
+    loss_reference: float | None = None
     count: int = 1
 
 
@@ -50,14 +59,20 @@ class CheckedModel:
     ----------
     bodies : name to (mass [kg], centre [m]).
     inertias : name to the moments of inertia about x, y, z through its centre [kg m²]; None where none is given.
+    products : name to its products of inertia by ``xy``, ``yz``, ``xz`` (the integral of x y dm ..) other than zero.
+    radii : name to the radii of gyration about x, y, z [m]; None without mass or inertia.
     connections : every connection with its values, points of equal values together.
+    loss_reference : the model's own frequency for loss factors [rad/s], or None.
     summary : totals, connections by kind, free directions.
     findings : what the network alone shows.
     """
 
     bodies: dict[str, tuple[float, tuple[float, float, float]]]
     inertias: dict[str, tuple[float, float, float] | None]
+    products: dict[str, dict[str, float]]
+    radii: dict[str, tuple[float, float, float] | None]
     connections: tuple[ConnectionFacts, ...]
+    loss_reference: float | None
     summary: Summary
     findings: tuple[Finding, ...]
 
@@ -75,17 +90,25 @@ def check_model(model: Model) -> CheckedModel:
     totals = summary(graph)
     bodies: dict[str, tuple[float, tuple[float, float, float]]] = {}
     inertias: dict[str, tuple[float, float, float] | None] = {}
+    products: dict[str, dict[str, float]] = {}
     for name in totals.bodies:
         data = graph.nodes[name]
         x, y, z = (float(value) for value in data.get("centre", (0.0, 0.0, 0.0)))
         bodies[name] = (float(data.get("mass") or 0.0), (x, y, z))
-        inertia = data.get("inertia")
-        moments = None if inertia is None else np.diag(np.asarray(inertia, dtype=float))
-        inertias[name] = None if moments is None else (float(moments[0]), float(moments[1]), float(moments[2]))
+        inertias[name], products[name] = None, {}
+        if data.get("inertia") is not None:
+            tensor = np.asarray(data["inertia"], dtype=float)
+            inertias[name] = (float(tensor[0, 0]), float(tensor[1, 1]), float(tensor[2, 2]))
+            # The tensor holds the products with a minus sign.
+            each = (("xy", tensor[0, 1]), ("yz", tensor[1, 2]), ("xz", tensor[0, 2]))
+            products[name] = {key: -float(value) for key, value in each if abs(value) > 1e-12 * tensor.max()}
     return CheckedModel(
         bodies=bodies,
         inertias=inertias,
+        products=products,
+        radii={name: radii_of_gyration(graph.nodes[name]) for name in totals.bodies},
         connections=_connections(graph),
+        loss_reference=graph.graph.get("reference_frequency"),
         summary=totals,
         findings=network_findings(graph),
     )
@@ -94,18 +117,16 @@ def check_model(model: Model) -> CheckedModel:
 def _connections(graph: Any) -> tuple[ConnectionFacts, ...]:
     found: list[ConnectionFacts] = []
     for _, _, key, edge in graph.edges(keys=True, data=True):
-        values: list[tuple[str, float | dict[str, float]]] = []
-        for which in ("stiffness", "damping", "inertance", "loss_factor"):
-            if edge.get(which) is not None:
-                values.append((which, edge[which]))
-        branches = len(edge.get("branches") or ())
-        remark = "" if not branches else f"{branches} series branch{'es' if branches > 1 else ''}"
         facts = ConnectionFacts(
             name=key.split("/", 1)[0],
             words=edge.get("label") or kind_words(edge),
             between=(str(edge["between"][0]), str(edge["between"][1])),
-            values=tuple(values),
-            remark=remark,
+            values=_values(edge),
+            branches=tuple(_values(branch) for branch in edge.get("branches") or ()),
+            geometry=tuple(
+                (part, _numbers(value)) for part, value in (edge.get("gear") or edge.get("beam") or {}).items()
+            ),
+            loss_reference=edge.get("reference_frequency") if edge.get("loss_factor") is not None else None,
         )
         same = next((index for index, other in enumerate(found) if replace(other, count=1) == facts), None)
         if same is None:
@@ -113,6 +134,15 @@ def _connections(graph: Any) -> tuple[ConnectionFacts, ...]:
         else:
             found[same] = replace(found[same], count=found[same].count + 1)
     return tuple(found)
+
+
+def _values(source: Mapping[str, Any]) -> Values:
+    names = ("stiffness", "damping", "inertance", "loss_factor")
+    return tuple((name, source[name]) for name in names if source.get(name) is not None)
+
+
+def _numbers(value: Any) -> tuple[float, ...]:
+    return tuple(float(part) for part in np.atleast_1d(np.asarray(value, dtype=float)))
 
 
 def solve_model(model: Model) -> DampedModes:

@@ -11,12 +11,10 @@ if TYPE_CHECKING:
     from mdof.description.schema import Model
     from mdof.findings import Finding
     from mdof.modes.mode import DampedModes, Mode, Verification
-    from mdof.report.checking import CheckedModel
     from mdof.report.screening import Screening
 
 __all__ = [
     "MODE_COLUMNS",
-    "check_record",
     "csv_line",
     "json_line",
     "list_record",
@@ -132,45 +130,6 @@ def _finite(value: float | None) -> float | None:
 
 def _hertz(value: float | None) -> float | None:
     return None if value is None else _finite(value / (2 * math.pi))
-
-
-def check_record(model: Model, checked: CheckedModel) -> dict[str, Any]:
-    """The object that ``mdof check --format json`` prints; nothing was solved, so nothing is verified."""
-    totals = checked.summary
-    return {
-        **envelope("check", model),
-        "results": {
-            "degrees_of_freedom": totals.degrees_of_freedom,
-            "bodies": [
-                {
-                    "name": name,
-                    "mass": mass,
-                    "centre": list(at),
-                    "inertia": None if (moments := checked.inertias[name]) is None else list(moments),
-                }
-                for name, (mass, at) in checked.bodies.items()
-            ],
-            "grounds": list(totals.grounds),
-            "total_mass": totals.total_mass,
-            "centre_of_gravity": None if totals.centre_of_gravity is None else list(totals.centre_of_gravity),
-            "connections": dict(totals.connections),
-            "connection_values": [
-                {
-                    "name": fact.name,
-                    "points": fact.count,
-                    "kind": fact.words,
-                    "between": list(fact.between),
-                    **dict.fromkeys(("stiffness", "damping", "inertance", "loss_factor")),
-                    **dict(fact.values),
-                }
-                for fact in checked.connections
-            ],
-            "groups": [list(group) for group in totals.groups],
-            "free_directions": list(totals.free_directions),
-        },
-        "findings": finding_records(checked.findings),
-        "verification": None,
-    }
 
 
 def screen_record(model: Model, modes: DampedModes, result: Screening) -> dict[str, Any]:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import math
 import re
 from importlib import import_module
 from pathlib import Path
@@ -138,6 +139,36 @@ def test_the_model_of_the_manual_can_be_read(tmp_path: Path) -> None:
     path = tmp_path / "example.yaml"
     path.write_text(re.findall(r"```yaml\n(.*?)```", page, flags=re.DOTALL)[0], encoding="utf-8")
     assert main(["check", str(path)]) == 0
+
+
+def test_what_the_model_page_says_of_defaults_and_references_is_so() -> None:
+    page = (Path(mdof.__file__).parent / "manual" / "model-file.md").read_text(encoding="utf-8")
+    for words in ("the origin `[0, 0, 0]` is taken", "centre of the first body that is not a ground", "[xx, yy, zz]"):
+        assert words in page
+
+    def frame(inertia: Any) -> dict[str, Any]:
+        return {"mass": 10, "inertia": inertia}
+
+    spring = {"between": ["a", "b"], "stiffness": {"x": 1e4}, "loss_factor": 0.1}
+    description: dict[str, Any] = {
+        "units": "SI",
+        "directions": ["x", "y", "z", "rx", "ry", "rz"],
+        "property_sets": {"soft": {"stiffness": {"x": 1e4}, "loss_factor": 0.1, "reference_frequency": "20 Hz"}},
+        "bodies": {"a": frame([1, 2, 2]), "b": frame({"xx": 1, "yy": 2, "zz": 2, "xy": 0.5})},
+        "connections": {
+            "bare": spring,
+            "own": {**spring, "reference_frequency": "30 Hz"},
+            "set": {"between": ["a", "ground"], "uses": "soft"},
+        },
+    }
+    graph = mdof.network(mdof.Model(**description))
+    assert graph.nodes["a"]["centre"].tolist() == [0, 0, 0]
+    assert graph.nodes["a"]["inertia"].tolist() == [[1, 0, 0], [0, 2, 0], [0, 0, 2]]
+    assert graph.nodes["b"]["inertia"].tolist() == [[1, -0.5, 0], [-0.5, 2, 0], [0, 0, 2]]
+    for whole, first in ((None, math.nan), ("12 Hz", 12.0)):
+        given = {} if whole is None else {"reference_frequency": whole}
+        references = mdof.assemble(mdof.Model(**description, **given)).loss_reference / (2 * math.pi)
+        assert references == pytest.approx([first, 30.0, 20.0], rel=1e-12, nan_ok=True)
 
 
 def test_the_python_page_runs(monkeypatch: pytest.MonkeyPatch) -> None:

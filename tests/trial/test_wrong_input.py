@@ -69,11 +69,48 @@ def test_the_models_that_faults_are_put_into_are_good(tmp_path: Path, text: str)
         (changed("1 kN/mm", "1 kN/mn"), "5:46: connections.mount.stiffness:", "write mm for a length"),
         (changed("1 kN/mm", "1 kN s/m"), "5:46: connections.mount.stiffness:", "such as kN*s/m"),
         (changed("ground", "floor"), "5:", "what never moves is `ground`"),
+        (
+            changed("[fan, ground]", "[fan, fixed_base]"),
+            "5:26: connections.mount.between.1:",
+            "what never moves is `ground`",
+        ),
         (changed("fan: 100 kg", "fan: {mass:100 kg}"), "3:", "put a blank after the colon: `mass: 100 kg`"),
+        (
+            changed("fan: 100 kg", "fan:\n    mass:100 kg"),
+            "4:5: bodies.fan",
+            "put a blank after the colon: `mass: 100 kg`",
+        ),
+        (
+            changed("fan: 100 kg", "fan:\n    mass:100 kg\n    centre: [0 m, 0 m, 0 m]"),
+            "4:5:",
+            "put a blank after the colon: `mass: 100 kg`",
+        ),
+        (
+            changed("1 kN/mm", "0,5 kN/mm"),
+            "5:46: connections.mount.stiffness:",
+            "write stiffness: 0.5 kN/mm, with a decimal",
+        ),
+        (changed("fan: 100 kg", "fan: 0,5 kg"), "3:8: bodies.fan", "write 0.5 kg, with a decimal point"),
+        (
+            spatial("inertia: [4 kg*m^2, 5 kg*m^2, 6 kg*m^2]", "inertia: [4, 5, 6]"),
+            "3:57: bodies.fan.inertia:",
+            "write [4 kg*m^2",
+        ),
+        (spatial(", 6 kg*m^2]", "]"), "3:57: bodies.fan.inertia:", "three, xx, yy and zz"),
+        (
+            spatial("[4 kg*m^2, 5 kg*m^2, 6 kg*m^2]", "{xx: 4 kg*m^2, zz: 6 kg*m^2}"),
+            "3:57: bodies.fan.inertia:",
+            "lacks yy",
+        ),
+        (GOOD + "criteria: {least_damping_ratio: 5}\n", "6:33: criteria.least_damping_ratio:", "write 0.05 or 5 %"),
         (changed("damping: 50 N*s/m", "damping_ratio: 5 %"), "5:", "`loss_factor`, twice the damping ratio"),
         (spatial("[0 m, 0 m, 1 m]", "[0 m, 0 m, 1,5 m]"), "3:", "decimal points and not commas"),
         (spatial("at: [0 m, 0 m, 0 m]", "at: [0, 0, 1 m]"), "5:", "write [0 m, 0 m, 1 m], or add `length: m`"),
-        (spatial(", inertia: [4 kg*m^2, 5 kg*m^2, 6 kg*m^2]", ""), "3:", "{xx: ..kg*m^2, yy: ..kg*m^2, zz: ..kg*m^2}"),
+        (
+            spatial(", inertia: [4 kg*m^2, 5 kg*m^2, 6 kg*m^2]", ""),
+            "3:",
+            "`inertia: {xx: .., yy: .., zz: ..}`, each a mass moment",
+        ),
         (changed("1 kN/mm", ".nan"), "5:46: connections.mount.stiffness:", "finite"),
         (changed("1 kN/mm", ".inf"), "5:46: connections.mount.stiffness:", "finite"),
         (changed("1 kN/mm", "010"), "5:46: connections.mount.stiffness:", "octal"),
@@ -177,11 +214,34 @@ def test_all_faults_of_a_file_come_at_once(tmp_path: Path) -> None:
     assert "mount: {between: [fan, ground], stiffness: 1 kN/kg" in said
 
 
-def test_a_misspelt_section_is_the_only_complaint(tmp_path: Path) -> None:
-    (tmp_path / "fan.yaml").write_text(changed("bodies", "bodys"))
+@pytest.mark.parametrize(
+    ("text", "words"),
+    [
+        (changed("bodies", "bodys"), "did you mean `bodies`?"),
+        (changed("connections", "conections"), "did you mean `connections`?"),
+        ("unit: SI\n" + changed("100 kg", "100"), "did you mean `units`?"),
+        (SPATIAL.replace("directions:", "direction:"), "did you mean `directions`?"),
+        (changed("100 kg", "{massless: off}"), "write true or false"),
+        (changed("1 kN/mm", "0,5 kN/mm"), "with a decimal point"),
+        (changed("damping: 50 N*s/m", "loss_factor: 0,05"), "write loss_factor: 0.05, with a decimal point"),
+        (spatial("at: [0 m, 0 m, 0 m]", "at: [0, 0, 1 m]"), "2 of three numbers have no unit"),
+        (spatial("inertia: [4 kg*m^2, 5 kg*m^2, 6 kg*m^2]", "inertia: [4, 5, 6]"), "3 of three numbers have no unit"),
+        (changed("[fan, ground]", "[fan, floor]"), "what never moves is `ground`"),
+    ],
+    ids=lambda value: repr(value[:30]),
+)
+def test_one_slip_is_one_complaint(tmp_path: Path, text: str, words: str) -> None:
+    (tmp_path / "fan.yaml").write_text(text)
     said = modes(tmp_path, "fan.yaml")
-    assert "did you mean `bodies`?" in said
-    assert said.count("fan.yaml:") == 1
+    assert words in said
+    assert said.count("fan.yaml:") == 1, said
+
+
+@pytest.mark.parametrize("name", ["motor.yaml", "other.yml", "f.yaml"])
+def test_a_file_with_another_name_is_not_suggested(tmp_path: Path, name: str) -> None:
+    for other in ("fan_budget.yaml", "a.yaml", "fan.txt"):
+        (tmp_path / other).write_text(GOOD)
+    assert "did you mean" not in modes(tmp_path, name)
 
 
 @pytest.mark.parametrize(("name", "words"), [("folder.yaml", "folder"), ("fam.yaml", "fan.yaml")])
