@@ -13,8 +13,11 @@ __all__ = ["Grid", "Paragraph", "fold", "pad", "styled"]
 _CODES = {"bold": "1", "dim": "2", "red": "31", "green": "32", "yellow": "33", "cyan": "36"}
 #: Signs that steer a terminal; a name from a foreign file must not.
 _CONTROL = re.compile(r"[\x00-\x09\x0b-\x1f\x7f-\x9f]")
-#: The blank between a number and its unit, where no line should end.
-_BEFORE_UNIT = re.compile(r"(?<=\d) (?=(?:%|Hz|rpm|rad/s|1/s|s|kg|m)(?![\w/]))")
+#: Blanks between a number and its unit, and within a unit, where no line should end.
+_BEFORE_UNIT = re.compile(
+    r"(?<=\d) (?=(?:%|Hz|rpm|rad/s|1/s|s|kg|m|[kMG]?N)(?![\w])(?!/(?!m\b|rad\b)))"
+    r"|(?<=N) (?=[ms]\b)|(?<=N m) (?=s\b)|(?<=kg) (?=m²)"
+)
 #: Signs after which a long word may be broken.
 _JOINTS = " \xa0_/-"
 _BLANKS = " \xa0"

@@ -85,3 +85,11 @@ def test_blanks_at_the_end_of_a_cell_keep_their_room() -> None:
 
 def test_wide_letters_are_padded_by_columns() -> None:
     assert cell_len(pad("発電機", 9)) == 9
+
+
+def test_no_line_ends_within_a_number_and_its_unit() -> None:
+    text = styled("values of 48 MN m/rad and 4.1 kN s/m and 3 kg m² at 30 Hz")
+    for width in range(12, 50):
+        lines = text.lines(width, colour=False)
+        for whole in ("48\xa0MN\xa0m/rad", "4.1\xa0kN\xa0s/m", "3\xa0kg\xa0m²", "30\xa0Hz"):
+            assert any(whole.replace("\xa0", " ") in line.replace("\xa0", " ") for line in lines), (width, lines)
