@@ -17,10 +17,10 @@ from mdof.eigen.threads import suited_threads
 from mdof.eigen.verify import GATE, real_times
 from mdof.errors import UnverifiedError, UsageError
 from mdof.modes.mode import DampedModes, Verification
-from mdof.modes.pairing import Pairing, pair_roots
+from mdof.modes.pairing import Pairing, mode_frequencies, pair_roots, rising
 from mdof.modes.physical import PhysicalResidual
 from mdof.modes.proportionality import proportionality_findings, shortcut
-from mdof.modes.regime import Numbers, Regime, classify
+from mdof.modes.regime import Numbers, Regime, classified
 from mdof.modes.remarks import mode_findings
 from mdof.modes.shapes import scaled_shapes
 from mdof.system import System
@@ -146,22 +146,20 @@ class _Solution:
 
     def modes(self, count: int | None, near: float) -> DampedModes:
         roots, pairing = self.roots, self.pairing
-        numbers = [self._classified(slow, fast) for slow, fast in pairing.pairs]
-        order = self._order(numbers)
+        values, numbers = classified(roots.values, roots.bounds, pairing.pairs, pairing.relaxation)
+        frequency = mode_frequencies(values)
+        order = rising(frequency, np.array([entry.decay_rate for entry in numbers]))
         if count is not None:
-            frequency = np.array([self._sort_key(pairing.pairs[index]) for index in order])
-            chosen = np.sort(np.argsort(np.abs(frequency - near), kind="stable")[:count])
-            order = [order[index] for index in chosen]
+            order = order[np.sort(np.argsort(np.abs(frequency[order] - near), kind="stable")[:count])]
+        values = values[order]
         pairs = [pairing.pairs[index] for index in order]
         numbers = [numbers[index] for index in order]
-        slow = np.array([pair[0] for pair in pairs])
-        values = np.array([self._eigenvalues(pair) for pair in pairs])
+        slow, fast = np.array(pairs, dtype=np.int64).reshape(-1, 2).T
         reduced, backward = self.reduced, self.backward
         verification = self._verify(numbers)
         shapes, own = scaled_shapes(self.system, reduced[:, slow])
-        fast = np.array([pair[1] if pair[1] != pair[0] else -1 for pair in pairs])
         fast_shapes = np.full_like(shapes, np.nan)
-        paired = fast >= 0
+        paired = (fast >= 0) & (fast != slow)
         if paired.any():
             fast_shapes[:, paired] = scaled_shapes(self.system, reduced[:, fast[paired]])[0]
         plain = shortcut(self.problem)
@@ -185,7 +183,7 @@ class _Solution:
             reduced_shapes=_frozen(own),
             undamped_frequencies=_frozen(undamped),
             shortcut_damping_ratios=_frozen(easy),
-            backward_errors=_frozen(np.array([max(backward[i], backward[max(i, j)]) for i, j in pairs])),
+            backward_errors=_frozen(np.maximum(backward[slow], backward[np.maximum(slow, fast)])),
             damping_ratio_bounds=_frozen(_array(numbers, "damping_ratio_bound")),
             frequency_bounds=_frozen(_array(numbers, "frequency_bound")),
             damping_references=_frozen(references),
@@ -194,40 +192,6 @@ class _Solution:
             findings=tuple(findings),
             verification=verification,
         )
-
-    def _classified(self, slow: int, fast: int) -> Numbers:
-        roots = self.roots
-        first, second = self._eigenvalues((slow, fast))
-        single = fast < 0
-        return classify(
-            first,
-            None if single else second,
-            (float(roots.bounds[slow]), float(roots.bounds[slow if single else fast])),
-            relaxation=slow in self.pairing.relaxation,
-        )
-
-    def _eigenvalues(self, pair: tuple[int, int]) -> tuple[complex, complex]:
-        slow, fast = pair
-        value = complex(self.roots.values[slow])
-        if fast < 0:
-            return value, complex(np.nan, np.nan)
-        return value, value.conjugate() if fast == slow else complex(self.roots.values[fast])
-
-    def _sort_key(self, pair: tuple[int, int]) -> float:
-        first, second = self._eigenvalues(pair)
-        return abs(first) if np.isnan(second.real) else float(np.sqrt(abs(first)) * np.sqrt(abs(second)))
-
-    def _order(self, numbers: list[Numbers]) -> list[int]:
-        """By sqrt|λs λf|, ties within 1e-9 by decay rate."""
-        keys = [self._sort_key(pair) for pair in self.pairing.pairs]
-        order = sorted(range(len(keys)), key=keys.__getitem__)
-        result: list[int] = []
-        start = 0
-        for stop in range(1, len(order) + 1):
-            if stop == len(order) or keys[order[stop]] > keys[order[start]] * (1 + 1e-9):
-                result += sorted(order[start:stop], key=lambda index: numbers[index].decay_rate)
-                start = stop
-        return result
 
     def _verify(self, numbers: list[Numbers]) -> Verification:
         roots, problem = self.roots, self.problem

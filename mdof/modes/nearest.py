@@ -15,8 +15,9 @@ from mdof.eigen.verify import GATE
 from mdof.errors import UnverifiedError, UsageError
 from mdof.findings import finding
 from mdof.modes.mode import DampedModes, Verification
+from mdof.modes.pairing import mode_frequencies, rising
 from mdof.modes.physical import PhysicalResidual
-from mdof.modes.regime import Numbers, Regime, classify
+from mdof.modes.regime import Numbers, Regime, classified
 from mdof.modes.shapes import scaled_shapes
 from mdof.system import System
 
@@ -68,11 +69,11 @@ def solve_nearest(
     values, bounds = _refined(system, physical, found)
     vectors = found.vectors
     pairs = _pairs(system, values, vectors)
-    sizes = np.array([_frequency(values, pair) for pair in pairs])
+    roots, numbers = classified(values, bounds, pairs, set())
+    sizes = mode_frequencies(roots)
     chosen = np.argsort(np.abs(sizes - near), kind="stable")[:count]
-    chosen = chosen[np.argsort(sizes[chosen], kind="stable")]
-    pairs = [pairs[index] for index in chosen]
-    numbers = [_numbers(values, bounds, pair) for pair in pairs]
+    chosen = chosen[rising(sizes[chosen], np.array([numbers[index].decay_rate for index in chosen]))]
+    pairs, numbers, roots = [pairs[index] for index in chosen], [numbers[index] for index in chosen], roots[chosen]
     slow = np.array([pair[0] for pair in pairs])
     backward = physical.backward_errors(values, vectors)
     verification = _verified(system, backward[slow], numbers, pairs)
@@ -84,7 +85,7 @@ def solve_nearest(
     unknown = np.full(len(pairs), np.nan)
     return DampedModes(
         system=system,
-        eigenvalues=_frozen(np.array([_eigenvalues(values, pair) for pair in pairs])),
+        eigenvalues=_frozen(roots),
         regimes=tuple(entry.regime for entry in numbers),
         natural_frequencies=_frozen(_column(numbers, "natural_frequency")),
         damping_ratios=_frozen(_column(numbers, "damping_ratio")),
@@ -172,25 +173,6 @@ def _likeness(system: System, weighted: Complex, first: Complex, second: Complex
     """Mass-weighted modal assurance criterion of two shapes."""
     own = abs(np.vdot(first, weighted)) * abs(np.vdot(second, system.mass @ second))
     return float(abs(np.vdot(second, weighted)) ** 2 / own) if own > 0 else 0.0
-
-
-def _frequency(values: Complex, pair: tuple[int, int]) -> float:
-    slow, fast = pair
-    return float(abs(values[slow])) if fast in (-1, slow) else float(np.sqrt(abs(values[slow] * values[fast])))
-
-
-def _eigenvalues(values: Complex, pair: tuple[int, int]) -> tuple[complex, complex]:
-    value = complex(values[pair[0]])
-    if pair[1] < 0:
-        return value, complex(np.nan, np.nan)
-    return value, value.conjugate() if pair[0] == pair[1] else complex(values[pair[1]])
-
-
-def _numbers(values: Complex, bounds: Real, pair: tuple[int, int]) -> Numbers:
-    first, second = _eigenvalues(values, pair)
-    single = pair[1] < 0
-    last = pair[0] if single else pair[1]
-    return classify(first, None if single else second, (float(bounds[pair[0]]), float(bounds[last])), relaxation=False)
 
 
 def _verified(system: System, backward: Real, numbers: list[Numbers], pairs: list[tuple[int, int]]) -> Verification:

@@ -17,7 +17,7 @@ if TYPE_CHECKING:
 
     from mdof.eigen.quadratic import Roots
 
-__all__ = ["Pairing", "pair_roots"]
+__all__ = ["Pairing", "mode_frequencies", "mode_roots", "pair_roots", "rising"]
 
 _LEAST_LIKENESS = 0.5
 _LEAST_LEAD = 2.0
@@ -36,6 +36,35 @@ class Pairing:
     relaxation: set[int]
     unresolved: set[int]
     vectors: NDArray[np.complex128]
+
+
+def mode_roots(values: NDArray[np.complex128], pairs: list[tuple[int, int]]) -> NDArray[np.complex128]:
+    """The two roots of every mode, slow one first, shape (m, 2); NaN where there is no second."""
+    slow, fast = np.array(pairs, dtype=np.int64).reshape(-1, 2).T
+    first = values[slow]
+    second = np.where(fast == slow, first.conj(), values[fast])
+    return np.column_stack([first, np.where(fast < 0, complex(np.nan, np.nan), second)])
+
+
+def mode_frequencies(roots: NDArray[np.complex128]) -> NDArray[np.float64]:
+    """What modes are ordered by: sqrt|λs λf|, or |λ| of a single root, shape (m,) [rad/s]."""
+    size = np.abs(roots)
+    return np.where(np.isnan(size[:, 1]), size[:, 0], np.sqrt(size[:, 0]) * np.sqrt(size[:, 1]))
+
+
+def rising(frequencies: NDArray[np.float64], rates: NDArray[np.float64]) -> NDArray[np.int64]:
+    """Order by frequency, ties within 1e-9 by decay rate."""
+    order = np.argsort(frequencies, kind="stable")
+    ranked = frequencies[order]
+    if len(order) > 1 and not np.any(ranked[1:] <= ranked[:-1] * (1 + 1e-9)):
+        return order
+    result: list[int] = []
+    start = 0
+    for stop in range(1, len(order) + 1):
+        if stop == len(order) or ranked[stop] > ranked[start] * (1 + 1e-9):
+            result += sorted(order[start:stop].tolist(), key=lambda index: float(rates[index]))
+            start = stop
+    return np.array(result, dtype=np.int64)
 
 
 def pair_roots(roots: Roots, heavy: int) -> Pairing:

@@ -6,8 +6,16 @@ import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from enum import StrEnum
+from typing import TYPE_CHECKING, Any
 
-__all__ = ["Numbers", "Regime", "classify", "time_to_two_percent"]
+import numpy as np
+
+from mdof.modes.pairing import mode_roots
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+__all__ = ["Numbers", "Regime", "classified", "classify", "time_to_two_percent"]
 
 #: |ζ - 1| up to this, or up to the stated bound where that is larger, is called critical.
 _CRITICAL = 1e-9
@@ -72,7 +80,7 @@ def classify(
             return _numbers(Regime.DIVERGENT, None, None, rate, None, relative)
         return _numbers(Regime.RELAXATION if relaxation else Regime.OVERDAMPED, None, None, rate, None, relative)
     if slow.imag != 0:
-        return _oscillating(slow, bounds[0], relative)
+        return _oscillating(slow, bounds[0], relative, abs(slow), *_ratio(slow, abs(slow), relative))
     product = slow.real * fast.real
     if product < 0 or (slow.real > 0 and fast.real > 0):
         return _numbers(Regime.DIVERGENT, None, None, -slow.real, None, relative)
@@ -85,6 +93,43 @@ def classify(
     return _numbers(
         Regime.CRITICALLY_DAMPED if critical else Regime.OVERDAMPED, frequency, ratio, -slow.real, bound, relative
     )
+
+
+def classified(
+    roots: NDArray[np.complex128], bounds: NDArray[np.float64], pairs: list[tuple[int, int]], relaxation: set[int]
+) -> tuple[NDArray[np.complex128], list[Numbers]]:
+    """Roots of every mode, shape (m, 2) with NaN for no second one, and what :func:`classify` makes of them.
+
+    Parameters
+    ----------
+    roots : shape (q,) [1/s]; bounds : shape (q,) [1/s]
+    pairs : indices (slow, fast) of the roots of every mode, as in :class:`mdof.modes.pairing.Pairing`
+    relaxation : indices of single roots that belong to first-order states
+    """
+    slow, fast = np.array(pairs, dtype=np.int64).reshape(-1, 2).T
+    values = mode_roots(roots, pairs)
+    first = values[:, 0]
+    size = np.abs(first)
+    low, high = bounds[slow], bounds[np.where(fast < 0, slow, fast)]
+    with np.errstate(divide="ignore", invalid="ignore"):
+        relative = np.fmax(low, high) / size
+        ratio, ratio_bound = _ratio(first, size, relative)
+    columns = (first, values[:, 1], low, high, relative, size, ratio, ratio_bound, slow)
+    result = []
+    for root, second, bound, other, part, frequency, damping, known, index in zip(
+        *(column.tolist() for column in columns), strict=True
+    ):
+        if root.imag != 0:
+            result.append(_oscillating(root, bound, part, frequency, damping, known))
+        else:
+            single = second != second
+            result.append(classify(root, None if single else second, (bound, other), relaxation=index in relaxation))
+    return values, result
+
+
+def _ratio(root: Any, frequency: Any, relative: Any) -> tuple[Any, Any]:
+    """Damping ratio of an oscillating root and its bound; numbers or arrays."""
+    return -root.real / frequency, relative * abs(root.imag) / frequency + relative**2 + 2e-15
 
 
 def time_to_two_percent(regime: Regime, eigenvalues: Sequence[complex]) -> float | None:
@@ -122,10 +167,9 @@ def time_to_two_percent(regime: Regime, eigenvalues: Sequence[complex]) -> float
     return time / slow
 
 
-def _oscillating(root: complex, bound: float, relative: float) -> Numbers:
-    frequency = abs(root)
-    ratio = -root.real / frequency
-    ratio_bound = relative * abs(root.imag) / frequency + relative**2 + 2e-15
+def _oscillating(
+    root: complex, bound: float, relative: float, frequency: float, ratio: float, ratio_bound: float
+) -> Numbers:
     if root.real == 0 or abs(root.real) <= bound:
         return _numbers(Regime.UNDAMPED, frequency, 0.0, 0.0, ratio_bound, relative)
     if root.real > 0:

@@ -21,7 +21,7 @@ from mdof.eigen.threads import at_once, suited_threads
 from mdof.eigen.verify import GATE, lengths
 from mdof.errors import UnverifiedError, UsageError
 from mdof.modes.pairing import pair_roots
-from mdof.modes.regime import Regime, classify
+from mdof.modes.regime import Regime, classified
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -130,13 +130,7 @@ def _solved(problem: NormalisedProblem, varied: NDArray[np.bool_], share: NDArra
             "leave this value out, or solve it by itself to see why",
         )
     pairing = pair_roots(roots, problem.heavy)
-    numbers = []
-    for slow, fast in pairing.pairs:
-        first = complex(roots.values[slow])
-        second = first.conjugate() if fast == slow else None if fast < 0 else complex(roots.values[fast])
-        bounds = (float(roots.bounds[slow]), float(roots.bounds[slow if fast < 0 else fast]))
-        relaxation = slow in pairing.relaxation
-        numbers.append(classify(first, second, bounds, relaxation=relaxation))
+    _, numbers = classified(roots.values, roots.bounds, pairing.pairs, pairing.relaxation)
     slow_index = np.array([pair[0] for pair in pairing.pairs])
     return _At(
         roots=roots.values[slow_index],
