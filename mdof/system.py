@@ -23,6 +23,9 @@ if TYPE_CHECKING:
 
 __all__ = ["System"]
 
+#: Coordinates of a small system.
+_SMALL = 200
+
 
 def _sparse(matrix: Any, name: str, shape: tuple[int, int] | None = None) -> Any:
     """``matrix`` as a csc_array of float64; refuses complex, non-finite and wrongly shaped input."""
@@ -131,6 +134,24 @@ class System:
         exact = single[entries.row] & (entries.data == 1.0)
         column, first = np.unique(entries.col[exact], return_index=True)
         return entries.row[exact][first].astype(np.int64), column.astype(np.int64)
+
+    @property
+    def is_small(self) -> bool:
+        """True where dense products beat sparse ones."""
+        return self.size <= _SMALL
+
+    def handy(self, name: str) -> Any:
+        """A stored matrix as a dense array where that multiplies faster than a sparse one; made once."""
+        matrix = getattr(self, name)
+        if matrix is None or not self.is_small:
+            return matrix
+        if name not in self._dense:
+            self._dense[name] = matrix.toarray()
+        return self._dense[name]
+
+    @cached_property
+    def _dense(self) -> dict[str, NDArray[np.float64]]:
+        return {}
 
     @cached_property
     def M(self) -> Any:

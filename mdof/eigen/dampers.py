@@ -91,13 +91,13 @@ def factored_damping(system: System) -> tuple[NDArray[np.float64] | None, Any]:
     Algorithms, 2nd ed. 2002, section 10.3); a matrix of full rank, or one that is not positive semidefinite, is left
     as it is.
     """
-    matrix = system.extra_damping
+    matrix = system.handy("extra_damping")
     if matrix is None:
         return None, None
     most = system.size // _FEW
     if most == 0:
         return None, matrix
-    full = matrix.toarray()
+    full = matrix if isinstance(matrix, np.ndarray) else matrix.toarray()
     diagonal = np.diagonal(full)
     largest = float(diagonal.max(initial=0.0))
     if largest <= 0 or np.any(diagonal < 0) or np.abs(full - full.T).max() > 4 * _EPS * largest:

@@ -101,14 +101,16 @@ def normalise(system: System) -> NormalisedProblem:
     """
     base, heavy, amplification = mass_basis(system.mass)
     light_count = base.shape[1] - heavy
-    springs, dampers = (turned(columns.T, base) for columns in (system.spring_columns, system.damper_columns))
+    springs, dampers = (turned(system.handy(name).T, base) for name in ("spring_columns", "damper_columns"))
     root_k = np.sqrt(np.abs(system.stiffness))
     spring_rows = root_k[:, None] * springs
-    extra_k = None if system.extra_stiffness is None else turned(turned(system.extra_stiffness, base).T, base).T
+    extra_k = (
+        None if system.extra_stiffness is None else turned(turned(system.handy("extra_stiffness"), base).T, base).T
+    )
     columns, rest = factored_damping(system)
     general = np.zeros((0, base.shape[1])) if columns is None else turned(columns.T, base)
     extra_c = None
-    for part in (rest, system.gyroscopic):
+    for part in (rest, system.handy("gyroscopic")):
         if part is not None:
             product = turned(turned(part, base).T, base).T
             extra_c = product if extra_c is None else extra_c + product

@@ -157,11 +157,12 @@ class _Solution:
         slow, fast = np.array(pairs, dtype=np.int64).reshape(-1, 2).T
         reduced, backward = self.reduced, self.backward
         verification = self._verify(numbers)
-        shapes, own = scaled_shapes(self.system, reduced[:, slow])
-        fast_shapes = np.full_like(shapes, np.nan)
         paired = (fast >= 0) & (fast != slow)
-        if paired.any():
-            fast_shapes[:, paired] = scaled_shapes(self.system, reduced[:, fast[paired]])[0]
+        # Slow and fast shapes in one go.
+        described, own = scaled_shapes(self.system, reduced[:, np.concatenate([slow, fast[paired]])])
+        shapes, own = described[:, : len(slow)], own[:, : len(slow)]
+        fast_shapes = np.full_like(shapes, np.nan)
+        fast_shapes[:, paired] = described[:, len(slow) :]
         plain = shortcut(self.problem)
         with_ratio = np.array([entry.damping_ratio is not None for entry in numbers])
         nearest = np.where(with_ratio, plain.nearest(pairing.vectors[:, slow], self.problem.heavy), -1)

@@ -77,21 +77,16 @@ def pair_roots(roots: Roots, heavy: int) -> Pairing:
         Leading coordinates of the root vectors that carry unit mass; likeness is judged on them.
     """
     vectors = roots.vectors.copy()
-    pairs: list[tuple[int, int]] = []
     relaxation: set[int] = set()
     unresolved: set[int] = set()
-    done = np.zeros(len(roots.values), dtype=bool)
-    for index, value in enumerate(roots.values):
-        if done[index]:
-            continue
-        mate = int(roots.partner[index])
-        if value.imag > 0 or mate == index:
-            pairs.append((index, index))
-            done[index] = True
-        elif mate >= 0:
-            slow, fast = sorted((index, mate), key=lambda which: -roots.values[which].real)
-            pairs.append((slow, fast))
-            done[[index, mate]] = True
+    index = np.arange(len(roots.values))
+    done = (roots.values.imag > 0) | (roots.partner == index)
+    pairs = [(alone, alone) for alone in np.nonzero(done)[0].tolist()]
+    for known in np.nonzero(~done & (roots.partner > index))[0].tolist():
+        mate = int(roots.partner[known])
+        slow, fast = sorted((known, mate), key=lambda which: -roots.values[which].real)
+        pairs.append((slow, fast))
+        done[[known, mate]] = True
     for number in np.unique(roots.block[~done]) if not done.all() else ():
         own = np.nonzero((roots.block == number) & ~done)[0]
         _pair_real(roots, own, vectors, heavy, pairs, relaxation, unresolved)

@@ -17,8 +17,6 @@ __all__ = ["PhysicalResidual"]
 
 _EPS = float(np.finfo(np.float64).eps)
 _POLISHING_STEPS = 2
-#: Coordinates up to which dense products beat sparse ones.
-_SMALL = 200
 #: Rounding errors of a product with a sparse row, in units of the roundoff.
 _ROW = 32
 
@@ -39,12 +37,11 @@ class PhysicalResidual:
     def __init__(self, system: System, references: NDArray[np.float64] | None) -> None:
         self.system = system
         self.references = references
-        small = system.size <= _SMALL
-        self.springs = _ready(system.spring_columns, small)
-        self.dampers = _ready(system.damper_columns, small)
-        self.mass = _ready(system.mass, small)
-        self.extra_stiffness = _ready(system.extra_stiffness, small)
-        self.velocity = [_ready(part, small) for part in (system.extra_damping, system.gyroscopic) if part is not None]
+        self.springs, self.dampers, self.mass, self.extra_stiffness = (
+            _ready(system.handy(name)) for name in ("spring_columns", "damper_columns", "mass", "extra_stiffness")
+        )
+        velocity = (system.handy(name) for name in ("extra_damping", "gyroscopic"))
+        self.velocity = [_ready(part) for part in velocity if part is not None]
         self.loss = system.loss_damping()
         floating = np.isnan(system.loss_reference) & (system.loss_factor != 0)
         self.floating_loss = np.where(floating, system.loss_factor * system.stiffness, 0.0)
@@ -54,7 +51,7 @@ class PhysicalResidual:
     def _parts(self, reference: float | None) -> tuple[Any, Any, Any]:
         """M, C and K, dense for small systems, loss factors without a reference matched at ``reference``."""
         system = self.system
-        if system.size > _SMALL:
+        if not system.is_small:
             return system.mass, system.damping_matrix(reference), system.K
         stiffness = (self.springs * system.stiffness) @ self.springs.T
         if self.extra_stiffness is not None:
@@ -175,7 +172,7 @@ class PhysicalResidual:
 
     def _unstretched(self, vectors: NDArray[np.complex128]) -> NDArray[np.complex128]:
         """Free motions without the stretch of the springs that the rounding of light coordinates has left in them."""
-        columns = _ready(self.system.spring_columns, small=True)
+        columns = self.springs if isinstance(self.springs, np.ndarray) else self.springs.toarray()
         columns = columns / np.maximum(np.linalg.norm(columns, axis=0), np.finfo(float).tiny)
         stretch = columns.T @ vectors
         return np.asarray(vectors - np.linalg.lstsq(columns.T, stretch, rcond=None)[0])
@@ -186,7 +183,9 @@ class PhysicalResidual:
         """One step of inverse iteration with the assembled Q(λ), which also corrects λ (Ruhe, SIAM J. Numer. Anal. 10,
         1973); the pair itself where that breaks down."""
         reference = None if self.references is None else float(self.references[index])
-        mass, damping, stiffness = (_ready(part, small=True) for part in self._parts(reference))
+        mass, damping, stiffness = (
+            part if isinstance(part, np.ndarray) else part.toarray() for part in self._parts(reference)
+        )
         quadratic = value**2 * mass + value * damping + stiffness
         scale = 1.0 / np.sqrt(np.maximum(np.abs(quadratic).max(axis=1), 1e-300))
         try:
@@ -207,13 +206,9 @@ class PhysicalResidual:
         return complex(moved), new / length
 
 
-def _ready(matrix: Any, small: bool) -> Any:
-    """Dense where that multiplies faster: in small systems, and where a matrix is hardly sparse."""
-    if (
-        matrix is None
-        or isinstance(matrix, np.ndarray)
-        or not (small or matrix.nnz > 0.1 * matrix.shape[0] * matrix.shape[1])
-    ):
+def _ready(matrix: Any) -> Any:
+    """Dense where a matrix is hardly sparse."""
+    if matrix is None or isinstance(matrix, np.ndarray) or matrix.nnz <= 0.1 * matrix.shape[0] * matrix.shape[1]:
         return matrix
     return matrix.toarray()
 
