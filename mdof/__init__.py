@@ -13,6 +13,7 @@ if TYPE_CHECKING:
     from mdof.errors import DamagedArchiveError, InputError, MdofError, ModelError, UnverifiedError, UsageError
     from mdof.findings import Finding
     from mdof.modes.analysis import solve
+    from mdof.modes.hysteretic import HystereticModes, hysteretic_modes
     from mdof.modes.mode import DampedModes, Mode
     from mdof.modes.regime import Regime
     from mdof.modes.sweep import DamperSweep, sweep
@@ -26,6 +27,7 @@ _HOMES = {
     "DamperSweep": "mdof.modes.sweep",
     "DampedModes": "mdof.modes.mode",
     "Finding": "mdof.findings",
+    "HystereticModes": "mdof.modes.hysteretic",
     "InputError": "mdof.errors",
     "MdofError": "mdof.errors",
     "Mode": "mdof.modes.mode",
@@ -36,6 +38,7 @@ _HOMES = {
     "UnverifiedError": "mdof.errors",
     "UsageError": "mdof.errors",
     "assemble": "mdof.assembly",
+    "hysteretic_modes": "mdof.modes.hysteretic",
     "load": "mdof.description.reading",
     "network": "mdof.description.network",
     "solve": "mdof.modes.analysis",
@@ -47,6 +50,7 @@ __all__ = [
     "DampedModes",
     "DamperSweep",
     "Finding",
+    "HystereticModes",
     "InputError",
     "MdofError",
     "Mode",
@@ -57,6 +61,7 @@ __all__ = [
     "UnverifiedError",
     "UsageError",
     "assemble",
+    "hysteretic_modes",
     "load",
     "network",
     "solve",

@@ -175,7 +175,7 @@ def test_the_python_page_runs(monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.chdir(Path(__file__).parents[2])
     page = (Path(mdof.__file__).parent / "manual" / "python.md").read_text(encoding="utf-8")
     snippets = re.findall(r"```python\n(.*?)```", page, flags=re.DOTALL)
-    assert len(snippets) == 5
+    assert len(snippets) == 6
     space: dict[str, Any] = {}
     for snippet in snippets:
         exec(compile(snippet, "python.md", "exec"), space)
