@@ -32,11 +32,11 @@ def screen(
     state: str | None,
     form: str,
 ) -> None:
-    """Judge every MODEL: one line a model and state, pass or FAIL with the failing modes.
+    """Judge every MODEL: one line a model and state, pass, or FAIL with the failing modes.
 
     Limits come from the options; what they leave open comes from `criteria` in the model. There is no limit of our own:
     without one the model is not judged (status 2). Rigid-body motions and relaxation roots are left out, growing modes
-    always fail. Status 1 when any model fails.
+    always fail. Status 1 when any model fails. Where no mode is judged the line says `none`, with a warning.
     """
     stated_below = None
     if below is not None:
@@ -58,7 +58,7 @@ def screen(
         ratio, limit = _limits(model, least_damping_ratio, stated_below)
         modes = solve_model(model)
         result = judge(modes, ratio, limit)
-        if not result.passed:
+        if result.failing:
             session.worsen(1)
         if form == "json":
             from mdof.report.records import json_line, screen_record
@@ -68,6 +68,10 @@ def screen(
             from mdof.report.summaries import screening_line
 
             session.data(screening_line(model.file or model.title, model.state, result, session.look()))
+        if not result.judged:
+            from mdof.report.summaries import unjudged_warning
+
+            session.say(unjudged_warning(model.file or model.title, model.state, session.look(sys.stderr)))
         serious = [item for item in modes.findings if item.severity == "serious"]
         if serious:
             from mdof.report.tables import findings_block

@@ -36,6 +36,8 @@ LARGEST_BOUND = 1e-2
 _FEW = 64
 #: Roots computed beyond those asked for, so that pairs are not cut apart.
 _SPARE = 4
+#: Numbers in an array of shapes that are worked on together.
+_PIECE = 4_000_000
 
 
 def obstacle(system: System) -> str:
@@ -66,7 +68,7 @@ def solve_nearest(
         raise UsageError(f"this system cannot be solved in part: {why_not}; solve it whole, without `count`")
     found = nearest_roots(_pencil(system), min(count + _SPARE, system.size), near, _solve_small, progress)
     physical = PhysicalResidual(system, None)
-    values, bounds = _refined(system, physical, found)
+    values, bounds, backward = _refined(system, physical, found)
     vectors = found.vectors
     pairs = _pairs(system, values, vectors)
     roots, numbers = classified(values, bounds, pairs, set())
@@ -75,7 +77,6 @@ def solve_nearest(
     chosen = chosen[rising(sizes[chosen], np.array([numbers[index].decay_rate for index in chosen]))]
     pairs, numbers, roots = [pairs[index] for index in chosen], [numbers[index] for index in chosen], roots[chosen]
     slow = np.array([pair[0] for pair in pairs])
-    backward = physical.backward_errors(values, vectors)
     verification = _verified(system, backward[slow], numbers, pairs)
     shapes, reduced = scaled_shapes(system, vectors[:, slow])
     fast_shapes = np.full_like(shapes, np.nan)
@@ -128,15 +129,20 @@ def _solve_small(mass: Real, damping: Real, stiffness: Real) -> tuple[Complex, C
     return roots.values, problem.recover @ roots.vectors
 
 
-def _refined(system: System, physical: PhysicalResidual, found: Nearest) -> tuple[Complex, Real]:
-    """Rayleigh step on every root from the factors, and structured forward bounds [1/s]."""
-    values, x = found.values, found.vectors
-    inertia, drag, elastic = physical.forces(x)
-    slope = _dots(x, 2 * values * inertia + drag)
-    step = -_dots(x, values**2 * inertia + values * drag + elastic) / slope
-    values = np.where(values.imag == 0, (values + step).real, values + step)
-    rest = values**2 * inertia + values * drag + elastic
-    uncertain = physical.uncertainty(values, x)[0]
+def _refined(system: System, physical: PhysicalResidual, found: Nearest) -> tuple[Complex, Real, Real]:
+    """Rayleigh step on every root from the factors, structured forward bounds [1/s] and backward errors.
+
+    A few shapes at a time: of a million coordinates each takes 16 MB in every array.
+    """
+    values, x = found.values.copy(), found.vectors
+    step = max(1, _PIECE // system.size)
+    pieces = [slice(start, start + step) for start in range(0, len(values), step)]
+    for piece in pieces:
+        inertia, drag, elastic = physical.forces(x[:, piece])
+        own, root = x[:, piece], values[piece]
+        slope = _dots(own, 2 * root * inertia + drag)
+        moved = root - _dots(own, root**2 * inertia + root * drag + elastic) / slope
+        values[piece] = np.where(root.imag == 0, moved.real, moved)
     # What the residual does through all other modes: its square over the distance to the next one.
     mass = np.maximum(system.mass.diagonal(), np.finfo(float).tiny)
     others = np.concatenate([values, values[values.imag > 0].conj()])
@@ -144,8 +150,16 @@ def _refined(system: System, physical: PhysicalResidual, found: Nearest) -> tupl
     distance[np.arange(len(values)), np.arange(len(values))] = np.inf
     size = np.abs(values)
     gap = np.minimum(distance.min(axis=1), size)
-    second = np.sum(np.abs(rest) ** 2 / mass[:, None], axis=0) / (gap * size)
-    return values, np.asarray((uncertain + second) / np.abs(slope))
+    bounds, backward = np.empty(len(values)), np.empty(len(values))
+    for piece in pieces:
+        own, root = x[:, piece], values[piece]
+        inertia, drag, elastic = physical.forces(own)
+        uncertain, slope, _ = physical.uncertainty(root, own, (inertia, drag, elastic))
+        rest = root**2 * inertia + root * drag + elastic
+        second = (1.0 / mass) @ (rest.real**2 + rest.imag**2) / (gap[piece] * size[piece])
+        bounds[piece] = (uncertain + second) / np.abs(slope)
+        backward[piece] = physical.backward_errors(root, own)
+    return values, bounds, backward
 
 
 def _pairs(system: System, values: Complex, vectors: Complex) -> list[tuple[int, int]]:

@@ -7,10 +7,12 @@ import math
 from collections.abc import Iterable, Sequence
 from typing import TYPE_CHECKING, Any
 
+from mdof.report.leaders import dissipates_most, kinetic_by_body, moves_most
+
 if TYPE_CHECKING:
     from mdof.description.schema import Model
     from mdof.findings import Finding
-    from mdof.modes.mode import DampedModes, Mode, Verification
+    from mdof.modes.mode import DampedModes, Verification
     from mdof.report.screening import Screening
 
 __all__ = [
@@ -77,18 +79,26 @@ def verification_record(verification: Verification) -> dict[str, Any]:
 
 def modes_record(model: Model, modes: DampedModes) -> dict[str, Any]:
     """The object that ``mdof modes --format json`` prints."""
-    labels = modes.system.labels
+    system = modes.system
     return {
         **envelope("modes", model),
-        "degrees_of_freedom": modes.system.degrees_of_freedom,
+        "degrees_of_freedom": system.degrees_of_freedom,
         "method": modes.method,
-        "modes": [{**_mode_record(mode, labels), **_judged(mode, labels)} for mode in modes],
+        "modes": [
+            _mode_record(mode, system.coordinate_bodies, system.coordinate_directions)
+            | {"frequency_bound": _finite(mode.frequency_bound)}
+            for mode in modes
+        ],
         "findings": finding_records(modes.findings),
         "verification": verification_record(modes.verification),
     }
 
 
-def _mode_record(mode: Any, labels: Sequence[str]) -> dict[str, Any]:
+def _mode_record(mode: Any, bodies: Sequence[str], directions: Sequence[str]) -> dict[str, Any]:
+    """One mode, solved or archived."""
+    labels = [f"{body}.{direction}" for body, direction in zip(bodies, directions, strict=True)]
+    energy = mode.energy
+    mover = moves_most(mode, bodies, directions, energy)
     record: dict[str, Any] = {
         "number": mode.number,
         "regime": str(mode.regime),
@@ -97,6 +107,12 @@ def _mode_record(mode: Any, labels: Sequence[str]) -> dict[str, Any]:
         "damped_frequency_hz": _hertz(mode.damped_frequency),
         "damping_ratio": _finite(mode.damping_ratio),
         "decay_rate": _finite(mode.decay_rate),
+        "time_to_two_percent": _finite(mode.time_to_two_percent),
+        "undamped_frequency_hz": _hertz(mode.undamped_frequency),
+        "shortcut_damping_ratio": _finite(mode.shortcut_damping_ratio),
+        "moves_most": {"body": mover.body, "direction": mover.direction},
+        "kinetic_energy": kinetic_by_body(mode, bodies, energy),
+        "dissipated_energy": dict(energy.dissipated) or None,
         "backward_error": _finite(mode.backward_error),
         "damping_ratio_bound": _finite(mode.damping_ratio_bound),
         "shape": _shape(mode.shape, labels),
@@ -104,19 +120,6 @@ def _mode_record(mode: Any, labels: Sequence[str]) -> dict[str, Any]:
     if mode.fast_shape is not None:
         record["fast_shape"] = _shape(mode.fast_shape, labels)
     return record
-
-
-def _judged(mode: Mode, labels: Sequence[str]) -> dict[str, Any]:
-    """What is known of a mode beside what its archive holds: bounds, the shortcut, and whose energy it is."""
-    energy = mode.energy
-    return {
-        "frequency_bound": _finite(mode.frequency_bound),
-        "time_to_two_percent": _finite(mode.time_to_two_percent),
-        "undamped_frequency_hz": _hertz(mode.undamped_frequency),
-        "shortcut_damping_ratio": _finite(mode.shortcut_damping_ratio),
-        "kinetic_energy": {label: share for label, share in zip(labels, energy.kinetic.tolist(), strict=True) if share},
-        "dissipated_energy": energy.dissipated,
-    }
 
 
 def _shape(shape: Any, labels: Sequence[str]) -> dict[str, list[float]]:
@@ -184,13 +187,12 @@ def list_record(header: Any) -> dict[str, Any]:
 
 def run_record(run: Any) -> dict[str, Any]:
     """The object that ``mdof archive show --format json`` prints."""
-    labels = [f"{body}.{direction}" for body, direction in zip(run.bodies, run.directions, strict=True)]
     record = _header_record("archive show", run.header)
     record["results"] |= {
         "command_line": list(run.header.command_line),
         "versions": dict(run.versions),
         "method": run.header.method,
-        "modes": [_mode_record(mode, labels) for mode in run.modes],
+        "modes": [_mode_record(mode, run.bodies, run.directions) for mode in run.modes],
     }
     return {**record, "findings": finding_records(run.findings), "verification": dict(run.verification)}
 
@@ -222,8 +224,6 @@ MODE_COLUMNS = (
 
 def mode_csv_rows(model: Model, modes: DampedModes) -> Iterable[tuple[Any, ...]]:
     """Rows under :data:`MODE_COLUMNS`."""
-    from mdof.report.tables import dissipates_most, moves_most
-
     system = modes.system
     for mode in modes:
         energy = mode.energy

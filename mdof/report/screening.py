@@ -27,18 +27,20 @@ class Screening:
 
     Attributes
     ----------
-    passed : True when no mode fails.
+    passed : True when every judged mode meets the limit, False when one fails, None when no mode was judged.
     failing : the modes that fail, by number.
     judged : how many modes the criterion applied to.
     least_damping_ratio : the limit.
     below : only modes with a natural frequency below this were judged [rad/s]; None for all.
+    lowest : the lowest natural frequency of a mode that could have been judged [rad/s]; None where none vibrates.
     """
 
-    passed: bool
+    passed: bool | None
     failing: tuple[Mode, ...]
     judged: int
     least_damping_ratio: float
     below: float | None
+    lowest: float | None
 
     @property
     def least_damped(self) -> Mode | None:
@@ -74,6 +76,7 @@ def screen(modes: Iterable[Mode], least_damping_ratio: float, below: float | Non
         raise UsageError(f"the frequency below which modes are judged must be above 0, not {below}")
     failing: list[Mode] = []
     judged = 0
+    frequencies: list[float] = []
     for mode in modes:
         if mode.regime in _ALWAYS_FAIL:
             judged += 1
@@ -81,15 +84,19 @@ def screen(modes: Iterable[Mode], least_damping_ratio: float, below: float | Non
             continue
         if mode.regime in _NEVER_JUDGED or mode.damping_ratio is None:
             continue
-        if below is not None and mode.natural_frequency is not None and mode.natural_frequency >= below:
-            continue
+        if mode.natural_frequency is not None:
+            frequencies.append(mode.natural_frequency)
+            if below is not None and mode.natural_frequency >= below:
+                continue
         judged += 1
         if mode.damping_ratio < least_damping_ratio * (1 - _ROUNDING):
             failing.append(mode)
     return Screening(
-        passed=not failing,
+        # Nothing to fail is no pass: a limit in the wrong unit looks like this.
+        passed=not failing if judged else None,
         failing=tuple(failing),
         judged=judged,
         least_damping_ratio=least_damping_ratio,
         below=below,
+        lowest=min(frequencies, default=None),
     )

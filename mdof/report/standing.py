@@ -42,7 +42,7 @@ def criteria_line(modes: Sequence[Any], criteria: Any) -> list[tuple[str, str]]:
     scope = "" if criteria.below is None else f" below {frequency(criteria.below)}"
     text = f"at least {percent(criteria.least_damping_ratio)}{scope}: "
     if not verdict.judged:
-        text += "no mode to judge"
+        text += "no mode judged"
     elif verdict.passed:
         text += f"met by {plural(verdict.judged, 'mode')}"
     else:

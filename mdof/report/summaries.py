@@ -11,18 +11,18 @@ from mdof.report.look import DASH, Look, frequency, percent, plural
 if TYPE_CHECKING:
     from mdof.report.screening import Screening
 
-__all__ = ["run_facts", "run_list", "screening_line"]
+__all__ = ["run_facts", "run_list", "screening_line", "unjudged_warning"]
 
 
 def screening_line(name: str, state: str | None, result: Screening, look: Look) -> str:
-    """One line a model and state: the verdict, then the modes that fail."""
+    """One line a model and state: the verdict, then the modes that fail, or why none was judged."""
     what = f"{name} [{state}]" if state else name
     limit = f"at least {percent(result.least_damping_ratio)}"
     scope = "" if result.below is None else f" below {frequency(result.below)}"
     judged = f"{plural(result.judged, 'mode')}{scope}, {limit}"
     if not result.judged:
-        # Nothing to fail is no pass: a limit in the wrong unit looks like this.
-        return _verdict(styled("none", "bold yellow"), f"{what}  no mode{scope} to judge, {limit}", look)
+        why = "none vibrates" if result.lowest is None else f"none{scope}; the lowest is at {frequency(result.lowest)}"
+        return _verdict(styled("none", "bold yellow"), f"{what}  no mode judged: {why}", look)
     if result.passed:
         return _verdict(styled("pass", "bold green"), f"{what}  {judged}", look)
     failing = "; ".join(
@@ -32,6 +32,13 @@ def screening_line(name: str, state: str | None, result: Screening, look: Look) 
         for mode in result.failing
     )
     return _verdict(styled("FAIL", "bold red"), f"{what}  {len(result.failing)} of {judged}: {failing}", look)
+
+
+def unjudged_warning(name: str, state: str | None, look: Look) -> str:
+    """What to do about a model of which no mode was judged."""
+    what = f"{name} [{state}]" if state else name
+    text = "no mode was judged, which is no pass; check the limits and their units"
+    return look.render(styled("warning", "bold yellow").append(f"  {what}: {text}"))
 
 
 def _verdict(word: Any, text: str, look: Look) -> str:

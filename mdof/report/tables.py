@@ -11,6 +11,7 @@ from rich.cells import cell_len
 
 from mdof.findings import Severity
 from mdof.report.layout import Grid, Paragraph, fold, pad, styled
+from mdof.report.leaders import Mover, Taker, dissipates_most, moves_most
 from mdof.report.look import DASH, Look, aligned, number, percent, plural
 
 if TYPE_CHECKING:
@@ -20,13 +21,10 @@ if TYPE_CHECKING:
 
 __all__ = [
     "ModeLike",
-    "Mover",
     "cautions",
-    "dissipates_most",
     "findings_block",
     "heading",
     "mode_table",
-    "moves_most",
     "provenance",
 ]
 
@@ -62,44 +60,6 @@ class ModeLike(Protocol):
     def shape(self) -> Any: ...
     @property
     def energy(self) -> Any: ...
-
-
-@dataclass(frozen=True, kw_only=True, slots=True)
-class Mover:
-    """A body or connection that leads in a mode, and its share; None where no energy tells."""
-
-    name: str
-    share: float | None
-
-    def __str__(self) -> str:
-        return self.name if self.share is None else f"{100 * self.share:.0f} % {self.name}"
-
-
-def moves_most(mode: ModeLike, bodies: Sequence[str], directions: Sequence[str], energy: Any = None) -> Mover:
-    """The body with most of the kinetic energy and its main direction; by the shape where no mass moves."""
-    kinetic = (energy or mode.energy).kinetic
-    weights = kinetic if kinetic.sum() > 0 else abs(mode.shape) ** 2
-    by_body: dict[str, float] = {}
-    for body, weight in zip(bodies, weights, strict=True):
-        by_body[body] = by_body.get(body, 0.0) + float(weight)
-    leader = max(by_body, key=lambda name: by_body[name])
-    own = [index for index, body in enumerate(bodies) if body == leader]
-    direction = directions[max(own, key=lambda index: float(weights[index]))]
-    name = f"{leader} {direction}" if len(set(directions)) > 1 else leader
-    return Mover(name=name, share=by_body[leader] if weights is kinetic else None)
-
-
-def dissipates_most(mode: ModeLike, energy: Any = None) -> Mover | None:
-    """The connection that dissipates most; the points of one connection (``pot/a``, ``pot/b``) count together."""
-    shares = (energy or mode.energy).dissipated
-    families: dict[str, list[float]] = {}
-    for name, share in shares.items():
-        families.setdefault(name.split("/")[0], []).append(share)
-    if not families:
-        return None
-    leader = max(families, key=lambda family: sum(families[family]))
-    members = [name for name in shares if name.split("/")[0] == leader]
-    return Mover(name=f"{leader} ×{len(members)}" if len(members) > 1 else members[0], share=sum(families[leader]))
 
 
 def heading(title: str, file: str | None, state: str | None, degrees_of_freedom: int, look: Look) -> str:
@@ -192,7 +152,7 @@ def _regime(mode: ModeLike) -> str:
     return f"{mode.regime} {number(abs(mode.decay_rate), 3)} 1/s"
 
 
-def _leaders(heading: str, leaders: Sequence[Mover | None], shares: bool) -> list[_Column]:
+def _leaders(heading: str, leaders: Sequence[Mover | Taker | None], shares: bool) -> list[_Column]:
     names = [DASH if leader is None else leader.name for leader in leaders]
     if not shares:
         return [_Column(heading, "most", names, left=True, least=8)]
@@ -259,7 +219,7 @@ def _gauge(ratio: float | None) -> str:
     return "▪" * filled + "·" * (_GAUGE - filled)
 
 
-def _records(rows: Sequence[ModeLike], movers: Sequence[Mover], takers: Sequence[Mover | None], look: Look) -> str:
+def _records(rows: Sequence[ModeLike], movers: Sequence[Mover], takers: Sequence[Taker | None], look: Look) -> str:
     """Three short lines a mode, for narrow terminals."""
     lines: list[Paragraph] = []
     room = len(str(rows[-1].number))

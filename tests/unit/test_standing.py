@@ -29,7 +29,7 @@ def test_the_least_damped_mode_of_the_skid_and_its_missed_criterion() -> None:
     ("name", "least", "criteria"),
     [
         ("one_unstable.yaml", [("grows", "mode 1 unstable")], "at least 5.00 %: missed by 1 of 1 mode: 1"),
-        ("one_rigid_body.yaml", [], "at least 5.00 %: no mode to judge"),
+        ("one_rigid_body.yaml", [], "at least 5.00 %: no mode judged"),
         ("one_overdamped.yaml", None, "at least 5.00 %: met by 1 mode"),
     ],
 )

@@ -17,10 +17,11 @@ from mdof.modes.mode import DampedModes
 from mdof.report.check_table import check_text
 from mdof.report.checking import check_model
 from mdof.report.layout import fold
+from mdof.report.leaders import dissipates_most, kinetic_by_body, moves_most
 from mdof.report.look import Look, aligned, number, percent
 from mdof.report.records import csv_line, json_line
 from mdof.report.screening import screen
-from mdof.report.tables import cautions, dissipates_most, findings_block, mode_table, moves_most
+from mdof.report.tables import cautions, findings_block, mode_table
 
 MODELS = Path(__file__).parents[2] / "models"
 
@@ -162,7 +163,11 @@ def test_points_of_one_connection_count_together(modes: DampedModes) -> None:
     assert leader.name == "pot ×2"
     assert leader.share == pytest.approx(1.0)
     mover = moves_most(modes[0], modes.system.coordinate_bodies, modes.system.coordinate_directions)
-    assert mover.name == "発電機"
+    assert (mover.name, mover.body, mover.direction) == ("発電機", "発電機", "x")  # one direction needs no naming
+    shares = kinetic_by_body(modes[0], modes.system.coordinate_bodies)
+    assert shares is not None
+    assert sum(shares.values()) == pytest.approx(1.0)
+    assert shares[mover.body] == mover.share == max(shares.values())
 
 
 def test_findings_come_serious_first_with_advice() -> None:
@@ -223,7 +228,8 @@ def test_screening_judges_only_what_it_should(modes: DampedModes) -> None:
     assert screen(modes, least * (1 + 1e-12)).passed  # rounding is no failure
     assert not screen(modes, least * 1.001).passed
     first = modes[0].natural_frequency or 0.0
-    assert screen(modes, 1.0, below=first).judged == 0
+    nothing = screen(modes, 1.0, below=first)
+    assert (nothing.judged, nothing.passed, nothing.lowest) == (0, None, first)
     assert screen(modes, 1.0, below=first * 1.001).judged == 1
     with pytest.raises(mdof.UsageError):
         screen(modes, -0.1)
