@@ -66,12 +66,16 @@ class PhysicalResidual:
     def forces(self, vectors: NDArray[np.complex128], index: Any = slice(None)) -> tuple[Any, Any, Any]:
         """M x, C x and K x for every column."""
         system = self.system
-        stretch = self.springs.T @ vectors
-        elastic = self.springs @ (system.stiffness[:, None] * stretch)
-        drag = self.springs @ (self.loss[:, None] * stretch)
+        stretch = _times(self.springs.T, vectors)
+        elastic = _times(self.springs, system.stiffness[:, None] * stretch)
+        drag = (
+            _times(self.springs, self.loss[:, None] * stretch)
+            if self.loss.any()
+            else np.zeros(vectors.shape, dtype=np.complex128)
+        )
         if self.references is not None:
             drag = drag + (self.springs @ (self.floating_loss[:, None] * stretch)) / self.references[index]
-        drag = drag + self.dampers @ (system.damping[:, None] * (self.dampers.T @ vectors))
+        drag += _times(self.dampers, system.damping[:, None] * _times(self.dampers.T, vectors))
         inertia = _times(self.mass, vectors)
         if self.extra_stiffness is not None:
             elastic = elastic + _times(self.extra_stiffness, vectors)
@@ -118,14 +122,14 @@ class PhysicalResidual:
         own = np.abs(values**2 * inertia + values * drag + elastic)
         effort = size * (size + abs(system.mass_proportional)) * _dots(magnitude, abs(self.mass) @ magnitude)
         if self.springs.shape[1]:
-            met = np.abs(self.springs.T @ vectors)
+            met = np.abs(_times(self.springs.T, vectors))
             met *= abs(self.springs).T @ magnitude
             effort += np.abs(system.stiffness) @ met * (1 + abs(system.stiffness_proportional) * size)
             effort += np.abs(self.loss) @ met * size
             if self.references is not None:
                 effort += np.abs(self.floating_loss) @ met * (size / self.references)
         if self.dampers.shape[1]:
-            met = np.abs(self.dampers.T @ vectors) * (abs(self.dampers).T @ magnitude)
+            met = np.abs(_times(self.dampers.T, vectors)) * (abs(self.dampers).T @ magnitude)
             effort += np.abs(system.damping) @ met * size
         if self.extra_stiffness is not None:
             effort += _dots(magnitude, abs(self.extra_stiffness) @ magnitude)
@@ -214,7 +218,11 @@ def _ready(matrix: Any) -> Any:
 
 
 def _times(matrix: Any, vectors: NDArray[np.complex128]) -> NDArray[np.complex128]:
-    return real_times(matrix, vectors) if isinstance(matrix, np.ndarray) else np.asarray(matrix @ vectors)
+    """A real matrix, dense or sparse, times complex columns."""
+    if isinstance(matrix, np.ndarray):
+        return real_times(matrix, vectors)
+    parts = np.ascontiguousarray(vectors, dtype=np.complex128).view(np.float64)
+    return np.ascontiguousarray(matrix @ parts).view(np.complex128)
 
 
 def _dots(first: Any, second: Any) -> Any:
