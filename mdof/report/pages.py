@@ -99,10 +99,10 @@ def _pole_maps(figure: Any, modes: DampedModes) -> None:
 
 def _upper(mode: Mode) -> Iterable[complex]:
     """The eigenvalues of a mode in the upper half plane, real ones included."""
-    values = mode.eigenvalues
-    if len(values) == 2 and values[0].imag != 0:
-        return [max(values, key=lambda value: value.imag)]
-    return values
+    if mode.eigenvalues[0].imag != 0:
+        return [max(mode.eigenvalues, key=lambda value: value.imag)]
+    # Two equal roots are one point of the map.
+    return dict.fromkeys(mode.eigenvalues)
 
 
 def _pole_map(

@@ -85,8 +85,12 @@ def modes_record(model: Model, modes: DampedModes) -> dict[str, Any]:
         "degrees_of_freedom": system.degrees_of_freedom,
         "method": modes.method,
         "modes": [
-            _mode_record(mode, system.coordinate_bodies, system.coordinate_directions)
-            | {"frequency_bound": _finite(mode.frequency_bound)}
+            _mode_record(
+                mode,
+                system.coordinate_bodies,
+                system.coordinate_directions,
+                frequency_bound=_finite(mode.frequency_bound),
+            )
             for mode in modes
         ],
         "findings": finding_records(modes.findings),
@@ -94,8 +98,8 @@ def modes_record(model: Model, modes: DampedModes) -> dict[str, Any]:
     }
 
 
-def _mode_record(mode: Any, bodies: Sequence[str], directions: Sequence[str]) -> dict[str, Any]:
-    """One mode, solved or archived."""
+def _mode_record(mode: Any, bodies: Sequence[str], directions: Sequence[str], **more: float | None) -> dict[str, Any]:
+    """One mode, solved or archived, with what is known ``more`` of it before its shape."""
     labels = [f"{body}.{direction}" for body, direction in zip(bodies, directions, strict=True)]
     energy = mode.energy
     mover = moves_most(mode, bodies, directions, energy)
@@ -115,6 +119,7 @@ def _mode_record(mode: Any, bodies: Sequence[str], directions: Sequence[str]) ->
         "dissipated_energy": dict(energy.dissipated) or None,
         "backward_error": _finite(mode.backward_error),
         "damping_ratio_bound": _finite(mode.damping_ratio_bound),
+        **more,
         "shape": _shape(mode.shape, labels),
     }
     if mode.fast_shape is not None:

@@ -369,6 +369,7 @@ def test_the_example_script_screens_a_folder(tmp_path: Path) -> None:
     lines = {line.split()[1]: line.split()[0] for line in text(done.stdout).splitlines()}
     assert lines["one_unstable.yaml"] == "FAIL"
     assert lines["firewater_skid.yaml"] == "pass"
+    assert lines["one_rigid_body.yaml"] == "none"
     assert len(lines) == len(list(MODELS.glob("*.yaml")))
     assert len((ROOT / "scripts" / "screen_folder.py").read_text().splitlines()) < 30
 
@@ -378,28 +379,56 @@ def test_several_runs_are_shown_and_a_damaged_one_is_named(tmp_path: Path) -> No
     assert run("modes", str(MODELS / "one_undamped.yaml"), "--archive", ".", cwd=tmp_path).returncode == 0
     (tmp_path / "broken.h5").write_bytes(b"no run at all")
     names = sorted(path.name for path in tmp_path.iterdir())
+    shown = text(run("archive", "show", *names, cwd=tmp_path).stdout)
+    assert all(name in shown for name in names if name != "broken.h5")
     done = run("archive", "show", *names, "--format", "json", cwd=tmp_path)
     assert done.returncode == 4
     assert len(objects(done.stdout, "archive-show")) == 2
     assert "broken.h5" in text(done.stderr)
 
 
-def test_energy_shares_of_the_json_sum_to_one() -> None:
-    (line,) = objects(run("modes", SKID, "--format", "json").stdout, "modes")
+def test_the_json_tells_who_moves_and_who_dissipates_and_the_archive_repeats_it(tmp_path: Path) -> None:
+    (line,) = objects(run("modes", SKID, "--format", "json", "--archive", "runs", cwd=tmp_path).stdout, "modes")
+    bodies = set(mdof.load(SKID).bodies)
     for mode in line["modes"]:
         assert sum(mode["kinetic_energy"].values()) == pytest.approx(1, abs=1e-12)
+        assert set(mode["kinetic_energy"]) <= bodies
+        assert max(mode["kinetic_energy"].items(), key=lambda item: item[1])[0] == mode["moves_most"]["body"]
         assert sum(mode["dissipated_energy"].values()) == pytest.approx(1, abs=1e-12)
         assert mode["time_to_two_percent"] > 0
         assert mode["undamped_frequency_hz"] > 0
     bounce = min(line["modes"], key=lambda mode: abs(mode["natural_frequency_hz"] - 12.04))
     assert bounce["shortcut_damping_ratio"] == pytest.approx(0.323, abs=0.001)
+    assert bounce["moves_most"] == {"body": "engine", "direction": "z"}
+    (archived,) = (tmp_path / "runs").iterdir()
+    (again,) = objects(run("archive", "show", str(archived), "--format", "json").stdout, "archive-show")
+    told = [{key: value for key, value in mode.items() if key != "frequency_bound"} for mode in line["modes"]]
+    assert again["results"]["modes"] == told
+
+
+def test_shares_of_nothing_are_null() -> None:
+    names = ("one_undamped", "one_rigid_body", "one_relaxation")
+    files = [str(MODELS / f"{name}.yaml") for name in names]
+    lines = objects(run("modes", *files, "--format", "json").stdout, "modes")
+    undamped, free, relaxing = (line["modes"][-1] for line in lines)
+    assert undamped["dissipated_energy"] is None
+    assert undamped["kinetic_energy"] == {undamped["moves_most"]["body"]: 1.0}
+    assert (free["damping_ratio"], free["shortcut_damping_ratio"], free["time_to_two_percent"]) == (None, None, None)
+    assert relaxing["dissipated_energy"] is not None
 
 
 def test_a_screen_that_judges_nothing_is_no_pass() -> None:
-    done = run("screen", SKID, "--below", "1Hz", "--least-damping-ratio", "5%")
+    words = ("screen", SKID, str(MODELS / "one_rigid_body.yaml"), "--below", "1Hz", "--least-damping-ratio", "5%")
+    done = run(*words)
     assert done.returncode == 0
-    assert text(done.stdout).startswith("none")
-    assert "no mode below 1.000 Hz to judge" in text(done.stdout)
+    skid, free = text(done.stdout).splitlines()
+    assert skid == f"none  {SKID}  no mode judged: none below 1.000 Hz; the lowest is at 2.385 Hz"
+    assert free.endswith("no mode judged: none vibrates")
+    assert text(done.stderr).count("no mode was judged, which is no pass") == 2
+    lines = objects(run(*words, "--format", "json").stdout, "screen")
+    assert [(line["results"]["passed"], line["results"]["judged"]) for line in lines] == [(None, 0), (None, 0)]
+    # One that fails is not excused by one that is not judged.
+    assert run(*words[:2], UNSTABLE, *words[3:]).returncode == 1
 
 
 def test_the_proof_of_the_json_keeps_its_schema() -> None:
