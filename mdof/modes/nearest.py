@@ -36,6 +36,10 @@ LARGEST_BOUND = 1e-2
 _FEW = 64
 #: Roots computed beyond those asked for, so that pairs are not cut apart.
 _SPARE = 4
+#: Partners of single real roots that are looked for, and in how many steps.
+_MOST_PARTNERS, _PARTNER_STEPS = 16, 6
+#: Likeness from which two real roots may be those of one mode.
+_LIKE = 0.5
 #: Numbers in an array of shapes that are worked on together.
 _PIECE = 4_000_000
 
@@ -67,6 +71,7 @@ def solve_nearest(
     if why_not:
         raise UsageError(f"this system cannot be solved in part: {why_not}; solve it whole, without `count`")
     found = nearest_roots(_pencil(system), min(count + _SPARE, system.size), near, _solve_small, progress)
+    found = _with_partners(system, found)
     physical = PhysicalResidual(system, None)
     values, bounds, backward = _refined(system, physical, found)
     vectors = found.vectors
@@ -129,6 +134,37 @@ def _solve_small(mass: Real, damping: Real, stiffness: Real) -> tuple[Complex, C
     return roots.values, problem.recover @ roots.vectors
 
 
+def _with_partners(system: System, found: Nearest) -> Nearest:
+    """The other root of overdamped modes of which one was found, by inverse iteration from its Rayleigh quotient."""
+    from scipy.sparse.linalg import splu
+
+    mass, damping, stiffness = system.M, system.C, system.K
+    values, vectors = found.values, found.vectors
+    alone = [first for first, second in _pairs(system, values, vectors) if second < 0][:_MOST_PARTNERS]
+    for index in alone:
+        x = vectors[:, index].real
+        # The product of the two roots is that of the quadratic of their common shape.
+        root = float(x @ (stiffness @ x)) / (float(x @ (mass @ x)) * float(values[index].real))
+        y, step = x, np.inf
+        for _ in range(_PARTNER_STEPS):
+            quadratic = (root**2 * mass + root * damping + stiffness).tocsc()
+            try:
+                y = splu(quadratic).solve((2 * root) * (mass @ y) + damping @ y)
+            except RuntimeError:
+                # The root itself, to the last digit: a little beside it the factors exist.
+                root *= 1 + 1e-11
+                continue
+            y = y / np.linalg.norm(y)
+            step = -float(y @ (quadratic @ y)) / float(y @ ((2 * root) * (mass @ y) + damping @ y))
+            root += step
+            if abs(step) <= 1e-13 * abs(root):
+                break
+        new = np.isfinite(root) and np.all(np.abs(values - root) > 1e-6 * abs(root))
+        if new and _likeness(system, mass @ x, x, y) >= _LIKE and abs(step) <= 1e-9 * abs(root):
+            values, vectors = np.append(values, complex(root)), np.column_stack([vectors, y.astype(np.complex128)])
+    return Nearest(values=values, vectors=vectors, method=found.method)
+
+
 def _refined(system: System, physical: PhysicalResidual, found: Nearest) -> tuple[Complex, Real, Real]:
     """Rayleigh step on every root from the factors, structured forward bounds [1/s] and backward errors.
 
@@ -175,7 +211,7 @@ def _pairs(system: System, values: Complex, vectors: Complex) -> list[tuple[int,
             like = [_likeness(system, weighted, vectors[:, first], vectors[:, second]) for second in fast]
             best = int(np.argmax(like)) if like else -1
             others = [value for index, value in enumerate(like) if index != best]
-            if like and like[best] >= 0.5 and like[best] >= 2 * max(others, default=0.0):
+            if like and like[best] >= _LIKE and like[best] >= 2 * max(others, default=0.0):
                 pairs.append((int(first), int(fast.pop(best))))
             else:
                 pairs.append((int(first), -1))
@@ -183,7 +219,7 @@ def _pairs(system: System, values: Complex, vectors: Complex) -> list[tuple[int,
     return pairs
 
 
-def _likeness(system: System, weighted: Complex, first: Complex, second: Complex) -> float:
+def _likeness(system: System, weighted: Any, first: Any, second: Any) -> float:
     """Mass-weighted modal assurance criterion of two shapes."""
     own = abs(np.vdot(first, weighted)) * abs(np.vdot(second, system.mass @ second))
     return float(abs(np.vdot(second, weighted)) ** 2 / own) if own > 0 else 0.0

@@ -98,3 +98,15 @@ def test_a_free_system_is_refused_with_advice() -> None:
     K[0, 0] = K[-1, -1] = 1
     with pytest.raises(mdof.UnverifiedError, match=r"moves freely|settle|only known"):
         mdof.solve(System.from_matrices(np.eye(60), np.zeros((60, 60)), K), count=3, method="partial")
+
+
+def test_the_partner_of_a_fast_root_is_found_and_the_mode_takes_its_own_place() -> None:
+    """A chain under heavy drag: a fast root near the frequency asked for belongs to a far slower mode."""
+    n = 400
+    columns = np.eye(n) - np.eye(n, k=1)
+    chain = mdof.System.from_factors(np.eye(n), columns, np.full(n, 1e4)).with_values(mass_proportional=5.0)
+    whole, part = mdof.solve(chain), mdof.solve(chain, count=6, near=3.0, method="partial")
+    nearest = np.sort(np.argsort(np.abs(whole.natural_frequencies - 3.0), kind="stable")[:6])
+    assert part.natural_frequencies == pytest.approx(whole.natural_frequencies[nearest], rel=1e-8)
+    assert part.damping_ratios == pytest.approx(whole.damping_ratios[nearest], rel=1e-8)
+    assert "partner-unresolved" not in {finding.code for finding in part.findings}
